@@ -1,0 +1,147 @@
+package continuation
+
+import "fmt"
+
+// Special is a special point of a branch: a [*Fold], a [*BranchPoint] or a
+// [*Hopf]. Each was confirmed by a refinement.
+type Special interface {
+	Kind() string    // "fold", "simple stationary bifurcation", "Hopf point"
+	Where() *Point   // the refined point
+	Index() int      // of Where among the points of its branch
+	Digits() int     // decimal digits of the parameter that can be relied on
+	Summary() string // in one line: fold at Coolant 303.42 K
+	setIndex(int)
+	around() (before, after int)
+}
+
+// found is what all special points have in common.
+type found struct {
+	point  *Point
+	index  int
+	digits int
+
+	// UnstableBefore and UnstableAfter are the numbers of eigenvalues with
+	// positive real part before and after the point, in the order of the
+	// branch; -1 when eigenvalues were not asked for.
+	UnstableBefore, UnstableAfter int
+	// Iterations is the number of Newton steps of the refinement.
+	Iterations int
+	// Uncertainty is the estimated error of the parameter, in its unit.
+	Uncertainty float64
+}
+
+// Where returns the refined point.
+func (f *found) Where() *Point { return f.point }
+
+// Value returns the value of the followed parameter.
+func (f *found) Value() float64 { return f.point.Value() }
+
+// At returns the value of a state, a parameter or a quantity there.
+func (f *found) At(name string) (float64, error) { return f.point.At(name) }
+
+// Index returns the place of the point among the points of its branch.
+func (f *found) Index() int { return f.index }
+
+// Digits returns how many decimal digits of the parameter can be relied on.
+func (f *found) Digits() int { return f.digits }
+
+// Parameter returns the followed parameter with its value at the point.
+func (f *found) Parameter() Parameter {
+	return Parameter{f.point.model.parameters[f.point.free].Variable, f.point.Value()}
+}
+
+// Model returns the model.
+func (f *found) Model() *Model { return f.point.model }
+
+func (f *found) setIndex(i int) { f.index = i }
+
+func (f *found) summary(kind string) string {
+	q := f.Parameter()
+	unit := ""
+	if q.Unit != "" {
+		unit = " " + q.Unit
+	}
+	return fmt.Sprintf("%s at %s %s%s", kind, q.Name, FormatDigits(q.Value, f.digits), unit)
+}
+
+// FormatDigits writes a number with as many significant digits as can be relied
+// on, at least 3 and at most 12.
+func FormatDigits(value float64, digits int) string {
+	return fmt.Sprintf("%.*g", min(max(digits, 3), 12), value)
+}
+
+// A Fold (limit point) is a point where the branch turns in the parameter:
+// f_x v = 0 with f_λ outside the range of f_x. For λ beyond it the two steady
+// states that meet there no longer exist.
+type Fold struct {
+	found
+	Right []float64 // v, |v| = 1 in the user's units, largest component positive
+	Left  []float64 // w, wᵀ v = 1 unless WeakLeft
+	// RangeTest is wᵀ f_λ. It is not 0: f_λ lies outside the range of f_x.
+	RangeTest float64
+	// RangeRelative is |RangeTest| over its natural size: |w| times the largest
+	// scaled |f_λ| or |f_x| met on the branch, all in scaled variables.
+	RangeRelative float64
+	// Quadratic is a = 1/2 wᵀ f_xx[v, v].
+	Quadratic float64
+	// Curvature is -a / wᵀf_λ: the branch is λ - λ* ≈ Curvature s², x - x* ≈ s v.
+	Curvature float64
+	// WeakLeft says that wᵀ v = 1 is out of reach (a second eigenvalue vanishes
+	// near by): Left has length 1 instead, and Quadratic and RangeTest scale
+	// with it.
+	WeakLeft bool
+
+	sensitivities []float64 // d λ*/d p_j, NaN for λ itself
+}
+
+// Kind returns "fold".
+func (f *Fold) Kind() string { return "fold" }
+
+// Summary says the fold in one line.
+func (f *Fold) Summary() string { return f.summary("fold") }
+
+// String says the fold in one line.
+func (f *Fold) String() string { return f.Summary() }
+
+// Greatest reports whether the fold is where the parameter is greatest on the
+// branch near by (the steady states end for growing values), and not least.
+func (f *Fold) Greatest() bool { return f.Curvature < 0 }
+
+// A BranchPoint is a singular point with f_λ in the range of f_x (wᵀ f_λ = 0), a
+// simple stationary bifurcation: two branches cross there.
+type BranchPoint struct {
+	found
+	Right []float64 // v
+	Left  []float64 // w
+	// RangeTest is wᵀ f_λ as computed, 0 up to rounding.
+	RangeTest     float64
+	RangeRelative float64
+}
+
+// Kind returns "simple stationary bifurcation".
+func (b *BranchPoint) Kind() string { return "simple stationary bifurcation" }
+
+// Summary says the point in one line.
+func (b *BranchPoint) Summary() string { return b.summary(b.Kind()) }
+
+// String says the point in one line.
+func (b *BranchPoint) String() string { return b.Summary() }
+
+// A Hopf point is one where a complex pair of eigenvalues crosses the imaginary
+// axis: the steady state gives way to an oscillation or an oscillation to it.
+type Hopf struct {
+	found
+	Omega  float64 // imaginary part of the pair, radians per unit of time
+	Period float64 // 2π / Omega
+}
+
+// Kind returns "Hopf point".
+func (h *Hopf) Kind() string { return "Hopf point" }
+
+// Summary says the point in one line.
+func (h *Hopf) Summary() string {
+	return fmt.Sprintf("%s, period %.4g", h.summary("Hopf point"), h.Period)
+}
+
+// String says the point in one line.
+func (h *Hopf) String() string { return h.Summary() }
