@@ -1,0 +1,7 @@
+//go:build !unix
+
+package wire
+
+import "net"
+
+func privately(bind func() (net.Listener, error)) (net.Listener, error) { return bind() }
