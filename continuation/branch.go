@@ -165,8 +165,6 @@ func (b *Branch) unstableWithin(from, to int) int {
 	return b.points[from].Unstable
 }
 
-func (f *found) around() (before, after int) { return f.UnstableBefore, f.UnstableAfter }
-
 // LimitAbove returns the first fold that is met on the branch when the parameter
 // grows from p: the limit of the steady state in use. p is a point of the branch,
 // or the start that it was followed from.

@@ -52,7 +52,7 @@ func (m *Margin) Digits() int {
 
 // String says the margin in one line.
 func (m *Margin) String() string {
-	text := fmt.Sprintf("margin in %s: %s", m.Parameter.Name, FormatDigits(m.Absolute, min(m.Digits(), 6)))
+	text := fmt.Sprintf("margin in %s: %s", m.Parameter.Name, FormatUncertain(m.Absolute, m.To.Uncertainty, 6))
 	if m.Parameter.Unit != "" {
 		text += " " + m.Parameter.Unit
 	}

@@ -1,6 +1,10 @@
 package continuation
 
-import "fmt"
+import (
+	"fmt"
+	"math"
+	"strconv"
+)
 
 // Special is a special point of a branch: a [*Fold], a [*BranchPoint] or a
 // [*Hopf]. Each was confirmed by a refinement.
@@ -10,8 +14,12 @@ type Special interface {
 	Index() int      // of Where among the points of its branch
 	Digits() int     // decimal digits of the parameter that can be relied on
 	Summary() string // in one line: fold at Coolant 303.42 K
-	setIndex(int)
+	// ValueText writes the value of the parameter with no more digits than can
+	// be relied on, and at most so many.
+	ValueText(most int) string
 	around() (before, after int)
+	// on returns a copy that belongs to a point of a branch.
+	on(p *Point, index int, reversed bool) Special
 }
 
 // found is what all special points have in common.
@@ -53,21 +61,42 @@ func (f *found) Parameter() Parameter {
 // Model returns the model.
 func (f *found) Model() *Model { return f.point.model }
 
-func (f *found) setIndex(i int) { f.index = i }
+func (f *found) around() (before, after int) { return f.UnstableBefore, f.UnstableAfter }
+
+// moved returns what is common, for a point of a branch that is passed in this
+// or the other direction.
+func (f found) moved(p *Point, index int, reversed bool) found {
+	f.point, f.index = p, index
+	if reversed {
+		f.UnstableBefore, f.UnstableAfter = f.UnstableAfter, f.UnstableBefore
+	}
+	return f
+}
 
 func (f *found) summary(kind string) string {
 	q := f.Parameter()
-	unit := ""
+	text := fmt.Sprintf("%s at %s %s", kind, q.Name, f.ValueText(12))
 	if q.Unit != "" {
-		unit = " " + q.Unit
+		text += " " + q.Unit
 	}
-	return fmt.Sprintf("%s at %s %s%s", kind, q.Name, FormatDigits(q.Value, f.digits), unit)
+	return text
 }
 
-// FormatDigits writes a number with as many significant digits as can be relied
-// on, at least 3 and at most 12.
-func FormatDigits(value float64, digits int) string {
-	return fmt.Sprintf("%.*g", min(max(digits, 3), 12), value)
+// ValueText writes the value of the parameter with no more digits than can be
+// relied on, and at most so many.
+func (f *found) ValueText(most int) string {
+	return FormatUncertain(f.Value(), f.Uncertainty, most)
+}
+
+// FormatUncertain writes a number whose error is about uncertainty with no more
+// significant digits than that allows, and at most so many. A number that cannot
+// be told from 0 is 0.
+func FormatUncertain(value, uncertainty float64, most int) string {
+	if math.Abs(value) <= 2*uncertainty {
+		return "0"
+	}
+	digits := min(max(reliableDigits(value, uncertainty), 1), most)
+	return strconv.FormatFloat(value, 'g', digits, 64)
 }
 
 // A Fold (limit point) is a point where the branch turns in the parameter:
@@ -145,3 +174,21 @@ func (h *Hopf) Summary() string {
 
 // String says the point in one line.
 func (h *Hopf) String() string { return h.Summary() }
+
+func (f *Fold) on(p *Point, index int, reversed bool) Special {
+	c := *f
+	c.found = f.moved(p, index, reversed)
+	return &c
+}
+
+func (b *BranchPoint) on(p *Point, index int, reversed bool) Special {
+	c := *b
+	c.found = b.moved(p, index, reversed)
+	return &c
+}
+
+func (h *Hopf) on(p *Point, index int, reversed bool) Special {
+	c := *h
+	c.found = h.moved(p, index, reversed)
+	return &c
+}
