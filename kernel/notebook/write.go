@@ -26,6 +26,13 @@ func (nb *Notebook) Write(path string) (written bool, err error) {
 	return WriteFile(path, nb.Bytes())
 }
 
+// EditedSince reports whether the file that the notebook was read from holds
+// something else by now.
+func (nb *Notebook) EditedSince() bool {
+	now, err := os.ReadFile(nb.path)
+	return err == nil && !bytes.Equal(now, nb.found)
+}
+
 // WriteFile writes a file by way of a temporary one beside it, so that readers
 // see the old content or the new and never a part. A file that holds the same
 // bytes already is not touched.

@@ -1,0 +1,42 @@
+// Command brinkline runs notebooks of steady-state models and is their kernel.
+package main
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"os"
+	"os/signal"
+	"syscall"
+
+	"brinkline/kernel/notebook"
+)
+
+// Exit codes: 1 for anything that went wrong, and what shells give a program
+// that was interrupted.
+const (
+	exitError       = 1
+	exitInterrupted = 130
+)
+
+func main() {
+	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt, syscall.SIGTERM)
+	context.AfterFunc(ctx, stop) // a second interrupt ends the program at once
+	err := root().ExecuteContext(ctx)
+	if err != nil {
+		fmt.Fprintln(os.Stderr, "brinkline: "+err.Error())
+	}
+	os.Exit(exitCode(err))
+}
+
+func exitCode(err error) int {
+	var cell *notebook.CellError
+	switch {
+	case err == nil:
+		return 0
+	case errors.As(err, &cell) && cell.Err.Interrupted:
+		return exitInterrupted
+	default:
+		return exitError
+	}
+}
