@@ -8,6 +8,7 @@ import (
 	"unicode/utf8"
 
 	"brinkline/display"
+	"brinkline/kernel/internal/flood"
 	"brinkline/kernel/session"
 )
 
@@ -26,6 +27,7 @@ type cellOutput struct {
 	*record
 	outputs []map[string]any
 	pending bool // clear before the next output
+	limit   flood.Limit
 }
 
 var _ session.Output = (*cellOutput)(nil)
@@ -41,6 +43,12 @@ func (r *record) close() {
 
 // Stream adds to the stream that the cell wrote last, or begins another.
 func (o *cellOutput) Stream(name, content string) {
+	o.mu.Lock()
+	defer o.mu.Unlock()
+	o.print(name, o.limit.Write(name, content))
+}
+
+func (o *cellOutput) print(name, content string) {
 	if content == "" {
 		return
 	}
@@ -49,17 +57,21 @@ func (o *cellOutput) Stream(name, content string) {
 		if n := len(o.outputs); n > 0 {
 			last := o.outputs[n-1]
 			if last["output_type"] == "stream" && last["name"] == name {
-				last["text"] = last["text"].(string) + content
+				last["text"].(*strings.Builder).WriteString(content)
 				return nil
 			}
 		}
-		return map[string]any{"output_type": "stream", "name": name, "text": content}
+		text := &strings.Builder{} // a cell may print one byte at a time
+		text.WriteString(content)
+		return map[string]any{"output_type": "stream", "name": name, "text": text}
 	})
 }
 
 // Display adds an output. Outputs of the same display id, in any cell, are
 // brought up to date with it.
 func (o *cellOutput) Display(b display.Bundle, id string) {
+	o.mu.Lock()
+	defer o.mu.Unlock()
 	o.add(id, func() map[string]any {
 		o.update(b, id)
 		return displayed("display_data", b)
@@ -88,28 +100,37 @@ func (o *cellOutput) Clear(wait bool) {
 	}
 }
 
-func (o *cellOutput) result(b display.Bundle, number int) {
-	o.add("", func() map[string]any {
-		out := displayed("execute_result", b)
-		out["execution_count"] = count(number)
-		return out
-	})
+// end closes the output of a cell that was run: with the value of its last
+// expression, or with the error that stopped it.
+func (o *cellOutput) end(r session.Result, number int) {
+	o.mu.Lock()
+	defer o.mu.Unlock()
+	o.limit.End(o.print)
+	switch {
+	case r.Err != nil:
+		o.add("", func() map[string]any { return failed(r.Err) })
+	case r.Value != nil:
+		o.add("", func() map[string]any {
+			out := displayed("execute_result", *r.Value)
+			out["execution_count"] = count(number)
+			return out
+		})
+	}
 }
 
-func (o *cellOutput) fail(err *session.Error) {
-	o.add("", func() map[string]any {
-		traceback := []any{}
-		for _, line := range err.Traceback {
-			traceback = append(traceback, line)
-		}
-		return map[string]any{"output_type": "error", "ename": err.Name, "evalue": err.Message, "traceback": traceback}
-	})
+func failed(err *session.Error) map[string]any {
+	traceback := []any{}
+	for _, line := range err.Traceback {
+		traceback = append(traceback, line)
+	}
+	if len(traceback) == 0 {
+		traceback = append(traceback, err.Name+": "+err.Message)
+	}
+	return map[string]any{"output_type": "error", "ename": err.Name, "evalue": err.Message, "traceback": traceback}
 }
 
 // add appends the output that build makes; nil stands for none.
 func (o *cellOutput) add(id string, build func() map[string]any) {
-	o.mu.Lock()
-	defer o.mu.Unlock()
 	if o.closed {
 		return
 	}
@@ -180,8 +201,8 @@ func stored(out map[string]any) map[string]any {
 	for key, value := range out {
 		copied[key] = value
 	}
-	if s, ok := out["text"].(string); ok {
-		copied["text"] = lines(s)
+	if text, ok := out["text"].(*strings.Builder); ok {
+		copied["text"] = lines(text.String())
 	}
 	if data, ok := out["data"].(map[string]any); ok {
 		split := make(map[string]any, len(data))

@@ -81,6 +81,21 @@ func TestOutputOfAGoroutineThatOutlivesItsCellGoesToThatCell(t *testing.T) {
 	expect(t, nb, "1: streamstdout(late)", "2:")
 }
 
+func TestAFloodIsCutInTheMiddle(t *testing.T) {
+	nb := cells(t, "x")
+	_ = Run(context.Background(), nb, script{"x": func(out session.Output) session.Result {
+		for range 300_000 {
+			out.Stream("stdout", "flood\n")
+		}
+		return session.Result{}
+	}}, nil)
+	outputs := nb.Cells[0].Outputs()
+	_, content := outputs[0].Stream()
+	if len(outputs) != 1 || len(content) > 1<<20+100 || !strings.Contains(content, " lines) of output left out ...\n") {
+		t.Errorf("%d outputs, the first has %d bytes", len(outputs), len(content))
+	}
+}
+
 func TestJSONValuesStayRawAndWhatJSONCannotSayIsLeftOut(t *testing.T) {
 	nb := cells(t, "x")
 	_ = Run(context.Background(), nb, script{"x": func(out session.Output) session.Result {
@@ -143,9 +158,10 @@ func play(outs []*cellOutput, m message) {
 	case "clear_output":
 		out.Clear(m.Wait)
 	case "execute_result":
-		out.result(plainText(m.Text), m.Cell+1)
+		value := plainText(m.Text)
+		out.end(session.Result{Value: &value}, m.Cell+1)
 	case "error":
-		out.fail(&session.Error{Name: "E", Message: m.Text})
+		out.end(session.Result{Err: &session.Error{Name: "E", Message: m.Text}}, m.Cell+1)
 	}
 }
 

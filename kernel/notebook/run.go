@@ -90,12 +90,7 @@ func Run(ctx context.Context, nb *Notebook, ex Executor, progress func(Step)) er
 
 func runCell(ctx context.Context, cell *Cell, number int, ex Executor, out *cellOutput) *session.Error {
 	result := ex.Run(ctx, session.Cell{ID: cell.ID(), Number: number, Source: cell.Source()}, out)
-	if result.Value != nil {
-		out.result(*result.Value, number)
-	}
-	if result.Err != nil {
-		out.fail(result.Err)
-	}
+	out.end(result, number)
 	cell.setNumber(number)
 	return result.Err
 }

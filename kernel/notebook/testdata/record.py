@@ -18,7 +18,7 @@ def content(m):
         "update_display_data": bundle,
         "clear_output": {"wait": m["wait"]},
         "execute_result": {"data": {"text/plain": m["text"]}, "metadata": {}, "execution_count": m["cell"] + 1},
-        "error": {"ename": "E", "evalue": m["text"], "traceback": []},
+        "error": {"ename": "E", "evalue": m["text"], "traceback": ["E: " + m["text"]]},
     }[m["type"]]
 
 
