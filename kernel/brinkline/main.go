@@ -6,8 +6,6 @@ import (
 	"errors"
 	"fmt"
 	"os"
-	"os/signal"
-	"syscall"
 
 	"brinkline/kernel/notebook"
 )
@@ -20,9 +18,7 @@ const (
 )
 
 func main() {
-	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt, syscall.SIGTERM)
-	context.AfterFunc(ctx, stop) // a second interrupt ends the program at once
-	err := root().ExecuteContext(ctx)
+	err := root().ExecuteContext(context.Background())
 	if err != nil {
 		fmt.Fprintln(os.Stderr, "brinkline: "+err.Error())
 	}

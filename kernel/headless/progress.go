@@ -52,19 +52,17 @@ func outcome(err *session.Error, took time.Duration) string {
 // place shows the line of an error with a caret under its column, and what to
 // do about it where that is known.
 func place(source string, err *session.Error) string {
-	const indent = "      "
 	shown := ""
 	if lines := strings.Split(source, "\n"); err.Line >= 1 && err.Line <= len(lines) {
-		line := lines[err.Line-1]
-		shown = fmt.Sprintf("%sline %d: %s\n", indent, err.Line, strings.ReplaceAll(line, "\t", " "))
-		if err.Column >= 1 {
-			before := utf8.RuneCountInString(line[:min(err.Column-1, len(line))])
-			gap := len(fmt.Sprintf("%sline %d: ", indent, err.Line)) + before
-			shown += strings.Repeat(" ", gap) + "^\n"
+		label := fmt.Sprintf("      line %d: ", err.Line)
+		line := strings.ReplaceAll(lines[err.Line-1], "\t", " ")
+		shown = label + line + "\n"
+		if err.Column >= 1 && err.Column <= utf8.RuneCountInString(line)+1 {
+			shown += strings.Repeat(" ", len(label)+err.Column-1) + "^\n"
 		}
 	}
 	if err.Hint != "" {
-		shown += indent + err.Hint + "\n"
+		shown += "      " + err.Hint + "\n"
 	}
 	return shown
 }
