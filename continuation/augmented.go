@@ -14,7 +14,7 @@ type refined struct {
 	size       float64   // its length
 }
 
-const refineSteps = 16
+const refineSteps = 30
 
 // iterate runs Newton's method: step stores the correction of the n+1 scaled
 // variables z (and of any further unknowns of its own) and returns it. It goes on
@@ -33,7 +33,7 @@ func (t *tracer) iterate(a *node, step func() ([]float64, error)) (refined, erro
 		if math.IsNaN(size) || size > 1 {
 			return refined{}, &refusal{reason: "the refinement diverges"}
 		}
-		if size > 0.5*previous && size < 1e-8 {
+		if size > 0.5*previous && size < 1e-11 {
 			// Rounding moves the point about now; it is as good as it gets.
 			return refined{k, d, size}, nil
 		}
@@ -44,7 +44,7 @@ func (t *tracer) iterate(a *node, step func() ([]float64, error)) (refined, erro
 		if size < 1e-14*(1+norm(z)) {
 			return refined{k, d, size}, nil
 		}
-		if size > 2*previous {
+		if size > 2*previous && size > 1e-9 {
 			return refined{}, &refusal{reason: "the refinement diverges"}
 		}
 		previous = size
@@ -144,7 +144,7 @@ func (t *tracer) nullVectors(v, w []float64) (right, left []float64, weak bool) 
 		left[i] = w[i] / t.rows[i]
 	}
 	length := norm(right)
-	if right[largest(right)] < 0 {
+	if right[leading(right)] < 0 {
 		length = -length
 	}
 	for i := range right {
@@ -161,6 +161,18 @@ func (t *tracer) nullVectors(v, w []float64) (right, left []float64, weak bool) 
 		left[i] /= product
 	}
 	return right, left, weak
+}
+
+// leading returns the first of the components that are largest, up to the error
+// of a null vector.
+func leading(v []float64) int {
+	size := math.Abs(v[largest(v)])
+	for i, x := range v {
+		if math.Abs(x) > (1-1e-6)*size {
+			return i
+		}
+	}
+	return 0
 }
 
 // rounding returns the error of wᵀ f that the rounding of the terms of f makes,

@@ -165,7 +165,7 @@ func (t *tracer) branchPoint(c *arc, a *node, s *crossing, r refined) (*BranchPo
 	t.certify(c, a, &b.found, r)
 	// Unlike a fold's, the error of the parameter is of first order in that of
 	// the derivatives: the last correction shows it.
-	b.Uncertainty = 4*math.Max(r.size, 1e-12)*t.S[n] + t.roundingOf(a.lambda)
+	b.Uncertainty = 4*math.Max(r.size, accuracy(t.s.diff))*t.S[n] + t.roundingOf(a.lambda)
 	b.digits = reliableDigits(a.lambda, b.Uncertainty)
 	return b, nil
 }

@@ -32,3 +32,17 @@ type Differentiator interface {
 	// Adjoint stores wᵀ f_zz[a, ·], n+1 components, in out.
 	Adjoint(x, p []float64, j int, w, a, out []float64) error
 }
+
+// A Differentiator whose derivatives carry more than rounding says how much.
+type inexact interface {
+	// Accuracy returns the estimated relative error of the Jacobian.
+	Accuracy() float64
+}
+
+// accuracy returns the relative error of first derivatives.
+func accuracy(d Differentiator) float64 {
+	if i, ok := d.(inexact); ok {
+		return i.Accuracy()
+	}
+	return epsilon
+}

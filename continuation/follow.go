@@ -41,7 +41,7 @@ func begin(p *Point, j int, plan *plan) (*tracer, error) {
 	if err := plan.check(p, j); err != nil {
 		return nil, err
 	}
-	s := newSystem(p.model, p.Parameters, j)
+	s := newSystem(p.model, p.State, p.Parameters, j)
 	t := newTracer(s, plan)
 	lambda := p.Parameters[j]
 	if err := t.setScales(p.State, lambda); err != nil {
@@ -54,7 +54,54 @@ func begin(p *Point, j int, plan *plan) (*tracer, error) {
 		return nil, err
 	}
 	t.nodes = []*node{a}
+	if err := t.startAtFold(a); err != nil {
+		return nil, err
+	}
 	return t, nil
+}
+
+// startAtFold marks a start that is a fold itself: no change of sign on either
+// side of it would show.
+func (t *tracer) startAtFold(a *node) error {
+	if math.Abs(a.t[t.n]) > 1e-5 {
+		return nil
+	}
+	ahead, err := t.reach(a, t.plan.first)
+	if err != nil {
+		return notRefusal(err)
+	}
+	back := *a
+	back.t, back.k, back.det = negated(a.t), nil, -a.det
+	behind, err := t.reach(&back, t.plan.first)
+	if err != nil {
+		return notRefusal(err)
+	}
+	behind.t, behind.det = negated(behind.t), -behind.det
+	behind.arc = -behind.arc
+	fold, err := t.refineFold(t.between(behind, ahead))
+	if err != nil {
+		return notRefusal(err)
+	}
+	if near := t.between(a, fold); near.length < 1e-6 {
+		a.special = fold.special
+	}
+	return nil
+}
+
+// notRefusal keeps interrupts and drops refusals.
+func notRefusal(err error) error {
+	if errors.Is(err, ErrInterrupted) {
+		return err
+	}
+	return nil
+}
+
+func negated(v []float64) []float64 {
+	w := make([]float64, len(v))
+	for i, x := range v {
+		w[i] = -x
+	}
+	return w
 }
 
 // check looks at what the options say about this start.
@@ -98,9 +145,7 @@ func (t *tracer) stand(a *node) error {
 		return err
 	}
 	if direction[t.n] < 0 {
-		for i := range direction {
-			direction[i] = -direction[i]
-		}
+		direction = negated(direction)
 	}
 	// Held at its parameter where that is possible: the start is a point of the
 	// analyst's and should not move in λ.
@@ -148,11 +193,7 @@ func (t *tracer) turned() *tracer {
 		}
 	}
 	a := *first
-	a.t = make([]float64, len(first.t))
-	for i, v := range first.t {
-		a.t[i] = -v
-	}
-	a.det = -first.det
+	a.t, a.det = negated(first.t), -first.det
 	a.arc = 0
 	o.nodes = []*node{&a}
 	return o
@@ -280,9 +321,7 @@ func (r *run) join() *Branch {
 func (b *Branch) add(t *tracer, a *node, reversed bool) {
 	p := t.point(a)
 	if reversed {
-		for i := range p.Tangent {
-			p.Tangent[i] = -p.Tangent[i]
-		}
+		p.Tangent = negated(p.Tangent)
 		p.Arclength = -p.Arclength
 	}
 	if s := a.special; s != nil {

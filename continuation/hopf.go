@@ -51,7 +51,7 @@ func (t *tracer) refineHopf(c *arc) (*node, error) {
 	// Eigenvalues carry the error of the derivatives; over the slope of the real
 	// part that becomes an error along the branch.
 	slope := math.Abs(part(c.b)-part(c.a)) / c.length
-	along := 4e-12*size/slope + width*c.length
+	along := 4*math.Max(accuracy(t.s.diff), t.tolerance)*size/slope + width*c.length
 	h.Uncertainty = along*math.Abs(a.t[t.n])*t.S[t.n] + t.roundingOf(a.lambda)
 	h.digits = reliableDigits(a.lambda, h.Uncertainty)
 	a.special = h

@@ -20,10 +20,10 @@ type Model struct {
 	context    func() context.Context
 	observer   Observer
 
-	named slicesOfStates // from the option States
+	named sliceStates // from the option States
 }
 
-type slicesOfStates struct {
+type sliceStates struct {
 	given  bool
 	names  []string
 	units  []string
@@ -91,7 +91,7 @@ func States(names, units []string, scales []float64) Option {
 		case len(scales) > len(names):
 			return fmt.Errorf("States has %d scales for %d names", len(scales), len(names))
 		}
-		m.named = slicesOfStates{true, names, units, scales}
+		m.named = sliceStates{true, names, units, scales}
 		return nil
 	}
 }
@@ -144,6 +144,22 @@ func (m *Model) Parameters() []Parameter { return append([]Parameter(nil), m.par
 
 // DerivativesNote says in a few words where the derivatives come from.
 func (m *Model) DerivativesNote() string { return m.der.Describe() }
+
+// Residual returns f(x, p) for all states and all parameters in order; nil
+// parameters are those that the model was made with.
+func (m *Model) Residual(x, p []float64) ([]float64, error) {
+	if p == nil {
+		p = m.values()
+	}
+	if len(x) != len(m.states) || len(p) != len(m.parameters) {
+		return nil, fmt.Errorf("model %s: %d states and %d parameters are wanted, not %d and %d", m.name, len(m.states), len(m.parameters), len(x), len(p))
+	}
+	f := make([]float64, len(x))
+	if err := newSystem(m, x, p, -1).Eval(x, p, f); err != nil {
+		return nil, fmt.Errorf("model %s: %w", m.name, err)
+	}
+	return f, nil
+}
 
 func (m *Model) values() []float64 {
 	p := make([]float64, len(m.parameters))

@@ -21,7 +21,7 @@ func (m *Model) Settle(guess any) (*Point, error) {
 }
 
 func (m *Model) settle(guess, params []float64) (*Point, error) {
-	s := newSystem(m, params, -1)
+	s := newSystem(m, guess, params, -1)
 	n := newton{s: s, x: append([]float64(nil), guess...)}
 	if err := n.run(); err != nil {
 		return nil, fmt.Errorf("model %s: %w", m.name, err)

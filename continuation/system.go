@@ -26,7 +26,9 @@ type system struct {
 	evaluations int
 }
 
-func newSystem(m *Model, p []float64, free int) *system {
+// newSystem makes a system at parameters p that begins its work at x. A state
+// without a scale of the analyst's has the size that it has there.
+func newSystem(m *Model, x, p []float64, free int) *system {
 	s := &system{m: m, n: len(m.states), free: free, eq: m.equations.own(), ctx: m.context()}
 	s.p = append([]float64(nil), p...)
 	s.sx = make([]float64, s.n)
@@ -34,6 +36,9 @@ func newSystem(m *Model, p []float64, free int) *system {
 	for i, v := range m.states {
 		s.sx[i], s.tagged[i] = v.Scale, v.Scale > 0
 		if v.Scale == 0 {
+			s.sx[i] = math.Abs(x[i])
+		}
+		if !(s.sx[i] > 0) || math.IsInf(s.sx[i], 0) {
 			s.sx[i] = 1
 		}
 	}

@@ -51,7 +51,7 @@ type tracer struct {
 	notes    []string
 	steps    int
 	end      *End
-	lost     error     // the model's last complaint, when a step failed by it
+	lost     error // the model's last complaint, when a step failed by it
 }
 
 func newTracer(s *system, p *plan) *tracer {
@@ -75,19 +75,52 @@ func (t *tracer) setScales(x []float64, lambda float64) error {
 		return err
 	}
 	slopes := t.slopes(x)
+	unknown := make([]bool, t.n)
+	for i := range t.n {
+		if t.s.tagged[i] {
+			continue
+		}
+		// A state that is 0 at the start takes its size from how fast it leaves
+		// it: that follows its unit, which a fixed number would not.
+		s := math.Max(math.Abs(x[i]), 0.1*size*math.Abs(slopes[i]))
+		if unknown[i] = s == 0; unknown[i] {
+			s = 1
+		}
+		t.s.sx[i] = s
+	}
+	t.equilibrate(unknown)
 	root := math.Sqrt(float64(t.n))
 	for i := range t.n {
-		if !t.s.tagged[i] {
-			// A state that is 0 at the start takes its size from how fast it
-			// leaves it: that follows its unit, which a fixed number would not.
-			t.s.sx[i] = math.Max(math.Abs(x[i]), 0.1*size*math.Abs(slopes[i]))
-			if t.s.sx[i] == 0 {
-				t.s.sx[i] = 1
-			}
-		}
 		t.S[i] = root * t.s.sx[i]
 	}
 	return nil
+}
+
+// equilibrate gives states of unknown size sizes at which their terms in the
+// equations are as large as those of the others (Ruiz, A scaling algorithm to
+// equilibrate both rows and columns norms in matrices, 2001).
+func (t *tracer) equilibrate(unknown []bool) {
+	term := func(i, k int) float64 { return math.Abs(t.jac[i*(t.n+1)+k]) * t.s.sx[k] }
+	rows := make([]float64, t.n)
+	for range 10 {
+		for i := range t.n {
+			rows[i] = 0
+			for k := range t.n {
+				rows[i] = math.Max(rows[i], term(i, k))
+			}
+		}
+		for k := range t.n {
+			worst := 0.0
+			for i, r := range rows {
+				if r > 0 {
+					worst = math.Max(worst, term(i, k)/r)
+				}
+			}
+			if unknown[k] && worst > 0 {
+				t.s.sx[k] /= worst
+			}
+		}
+	}
 }
 
 // slopes returns dx/dλ at the start, zeros where f_x is singular.

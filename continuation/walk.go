@@ -39,8 +39,9 @@ func (p *Point) Walk(parameter string, opts ...FollowOption) (*Walk, error) {
 }
 
 // Step takes n accepted steps and returns the points that they add, special
-// points and landings among them. At an end it stops early and says so in the
-// error; what was computed is kept and returned.
+// points and landings among them. Where it cannot go on it stops early and says
+// so in the error; what was computed is kept and returned. After a special point
+// or a condition that it was told to stop at, the next Step goes on.
 func (w *Walk) Step(n int) ([]*Point, error) {
 	if n < 1 {
 		return nil, fmt.Errorf("Step(%d): at least one step is needed", n)
@@ -49,18 +50,27 @@ func (w *Walk) Step(n int) ([]*Point, error) {
 		return nil, fmt.Errorf("StepLength is %g: a step length must be positive", w.StepLength)
 	}
 	before := len(w.t.nodes)
+	w.goOn()
 	for range n {
-		if w.t.end == nil {
-			w.t.leaving()
-		}
 		if w.t.end != nil {
-			return w.since(before), fmt.Errorf("the walk %s; Turn or Back before stepping on", w.t.end.Text)
+			return w.since(before), fmt.Errorf("the walk %s", w.t.end.Text)
 		}
 		if err := w.one(); err != nil {
 			return w.since(before), err
 		}
 	}
 	return w.since(before), nil
+}
+
+// goOn lets a walk go on after an end that is not final: a special point or a
+// condition to stop at, an interrupt, a failed step that may now be shorter.
+func (w *Walk) goOn() {
+	if e := w.t.end; e != nil && e.Reason != LeftRange && e.Reason != LeftBound && e.Reason != Closed {
+		w.t.end = nil
+	}
+	if w.t.end == nil {
+		w.t.leaving()
+	}
 }
 
 func (w *Walk) one() error {
@@ -87,11 +97,7 @@ func (w *Walk) Here() *Point { return w.t.point(w.t.nodes[len(w.t.nodes)-1]) }
 func (w *Walk) Turn() {
 	here := w.t.nodes[len(w.t.nodes)-1]
 	back := *here
-	back.t = make([]float64, len(here.t))
-	for i, v := range here.t {
-		back.t[i] = -v
-	}
-	back.det = -here.det
+	back.t, back.det = negated(here.t), -here.det
 	w.t.nodes[len(w.t.nodes)-1] = &back
 	w.t.end = nil
 }

@@ -147,3 +147,44 @@ func Values(raw json.RawMessage, m *continuation.Model) ([]float64, error) {
 	}
 	return out, nil
 }
+
+// Rescaled builds the model of the case with state i in units smaller by
+// factors[i]: its numbers are larger by that. Parameters keep their values and are
+// named P[0], P[1], ... in the order of the model. With scales, the typical sizes of
+// the states are given to it.
+func (c *Case) Rescaled(factors []float64, scales bool) (*continuation.Model, error) {
+	base, err := c.Model(false)
+	if err != nil {
+		return nil, err
+	}
+	names, sizes := make([]string, c.N), []float64(nil)
+	for i, v := range base.States() {
+		names[i] = v.Name
+		if scales {
+			sizes = append(sizes, float64(c.Scale[i])*factors[i])
+		}
+	}
+	type params struct{ P []float64 }
+	q := params{}
+	for _, p := range base.Parameters() {
+		q.P = append(q.P, p.Value)
+	}
+	x := make([]float64, c.N)
+	model := func(u []float64, q params, f []float64) {
+		for i := range x {
+			x[i] = u[i] / factors[i]
+		}
+		r, err := base.Residual(x, q.P)
+		if err != nil {
+			panic(err)
+		}
+		for i := range f {
+			f[i] = r[i] * factors[i] // rates are in the new units too
+		}
+	}
+	opts := []continuation.Option{continuation.Named(c.ID), continuation.States(names, nil, sizes)}
+	if c.Setting == "balance" {
+		opts = append(opts, continuation.Balance())
+	}
+	return continuation.NewModel(model, q, opts...)
+}
