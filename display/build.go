@@ -1,0 +1,93 @@
+package display
+
+import (
+	"strings"
+
+	"gonum.org/v1/plot/vg"
+
+	"brinkline/continuation"
+)
+
+// build lays the figure out.
+func (f *Figure) build() (*picture, error) {
+	s, err := f.scene()
+	if err != nil {
+		return nil, err
+	}
+	p := newPlot()
+	p.Title.Text = spell(f.title)
+	notes := f.notes(s)
+	lines := f.wrapNotes(notes)
+	height := f.height - vg.Length(len(lines))*notePitch
+	xs, ys := s.values()
+	if err := s.x.fit(&p.X, xs, f.width-60, false); err != nil {
+		return nil, err
+	}
+	if err := s.y.fit(&p.Y, ys, height-45, true); err != nil {
+		return nil, err
+	}
+	d := &drawing{scene: s}
+	p.Add(d)
+	sentence := f.sentence(s)
+	pic := &picture{
+		plot: p, width: f.width, height: f.height, notes: lines,
+		title: f.heading(s), description: sentence,
+		text: strings.TrimSpace(sentence + "\n" + strings.Join(notes, "\n")),
+	}
+	return pic, nil
+}
+
+// heading is the title for those who do not see the picture.
+func (f *Figure) heading(s *scene) string {
+	if f.title != "" {
+		return f.title
+	}
+	return s.y.what() + " against " + s.x.what() + " (" + strings.Join(f.modelNames(), ", ") + ")"
+}
+
+// notes are the lines under a branch that is shown as it is: why it ends, and
+// what the run could not explain.
+func (f *Figure) notes(s *scene) []string {
+	if !f.captioned {
+		return nil
+	}
+	var notes []string
+	for _, b := range f.branches() {
+		notes = append(notes, endsOf(b))
+		notes = append(notes, b.Notes()...)
+	}
+	return notes
+}
+
+func (f *Figure) wrapNotes(notes []string) []string {
+	var lines []string
+	for _, n := range notes {
+		lines = append(lines, wrap(spell(sentenceCase(n)), noteSize, f.width-12)...)
+	}
+	const most = 8
+	if len(lines) > most {
+		lines = append(lines[:most-1], "... the rest is in the text of the figure and in the branch's Notes")
+	}
+	return lines
+}
+
+// endsOf says how many points there are and why the branch ends.
+func endsOf(b *continuation.Branch) string {
+	text := count(len(b.Points()), "point", "points")
+	ends := b.Ends()
+	switch {
+	case b.Closed():
+		return text + "; the branch is a closed curve"
+	case ends[0].Text == ends[1].Text:
+		return text + "; the branch " + ends[0].Text + " (both ends)"
+	default:
+		return text + "; the branch " + ends[0].Text + ", and " + ends[1].Text
+	}
+}
+
+func sentenceCase(text string) string {
+	if text == "" || strings.HasSuffix(text, ".") {
+		return text
+	}
+	return strings.ToUpper(text[:1]) + text[1:] + "."
+}

@@ -1,0 +1,65 @@
+package display
+
+import (
+	"math"
+	"strconv"
+)
+
+// How many digits tables and cards show of values that carry no error estimate:
+// the corrector's tolerance is far below.
+const (
+	stateDigits  = 6
+	vectorDigits = 4
+)
+
+// aligned writes the numbers of a column with one number of decimals where that
+// shows all of them to two digits at least, so that their points stand one under
+// the other; else each with its own. digits counts from the greatest.
+func aligned(values []float64, digits int) []string {
+	all := make([]int, len(values))
+	for i := range all {
+		all[i] = digits
+	}
+	return alignedTo(values, all)
+}
+
+// alignedTo does the same for numbers of which different digits can be relied on:
+// no cell has decimals beyond its own.
+func alignedTo(values []float64, digits []int) []string {
+	out := make([]string, len(values))
+	decimals, ok := commonDecimals(values, digits)
+	for i, v := range values {
+		switch {
+		case v == 0 || math.IsNaN(v) || math.IsInf(v, 0):
+			out[i] = special(v)
+		case ok:
+			out[i] = strconv.FormatFloat(v, 'f', decimals, 64)
+		default:
+			out[i] = reliable(v, digits[i])
+		}
+	}
+	return out
+}
+
+func commonDecimals(values []float64, digits []int) (decimals int, ok bool) {
+	greatest, least := 0.0, math.Inf(1)
+	for _, v := range values {
+		if v != 0 && !math.IsNaN(v) && !math.IsInf(v, 0) {
+			greatest, least = max(greatest, math.Abs(v)), min(least, math.Abs(v))
+		}
+	}
+	if greatest == 0 || greatest >= 1e7 || least < 1e-5 {
+		return 0, false
+	}
+	fewest, most := math.MaxInt, math.MinInt
+	for i, v := range values {
+		if v == 0 || math.IsNaN(v) || math.IsInf(v, 0) {
+			continue
+		}
+		d := min(max(digits[i], 3), 10) - 1 - exponentOf(v, digits[i])
+		fewest, most = min(fewest, d), max(most, d)
+	}
+	// The smallest number sets no limit on the decimals of the others.
+	decimals = max(fewest, 0)
+	return decimals, least >= 10*math.Pow10(-decimals) || most-fewest <= 1
+}

@@ -1,0 +1,27 @@
+// Package display shows the values of package continuation: branches as
+// pictures, special points and sensitivities as tables, models, steady states
+// and folds as cards. It picks the renderer by the type of the value.
+//
+// A picture follows the usage of textbooks. A stable stretch is a solid line, an
+// unstable one a dashed line of the same ink, and one whose stability was not
+// computed a dotted line. A special point is drawn as the local geometry it
+// stands for: a fold is a short bar along the tangent with which the curve turns;
+// a simple stationary bifurcation is the crossing of the branch's tangent with
+// the null vector of f_x, the direction in which the steady states there stop
+// being isolated; a Hopf point is a small ring with a tick. The label beside it
+// says the word and the value.
+//
+// Of a balance (a model without time) nothing is called stable. Its solid
+// stretches are those on which f_x has as many eigenvalues with positive real
+// part as at the start of the branch, its dashed ones those with another number,
+// and the description of the picture says so.
+//
+//	display.Show(path, fold)                            // in the order given
+//	display.Plot(path, start).Y("Temperature")          // a picture on request
+//	display.Table(path)                                 // the special points
+//	display.Points(path)                                // every point
+//
+// In an ordinary program Show prints the plain text of its values to standard
+// output; WriteSVG, WritePNG and Save put a figure into a file. A notebook shows
+// the richest form that its front end understands.
+package display

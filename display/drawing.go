@@ -1,0 +1,222 @@
+package display
+
+import (
+	"math"
+
+	"gonum.org/v1/plot"
+	"gonum.org/v1/plot/vg"
+	"gonum.org/v1/plot/vg/draw"
+
+	"brinkline/display/internal/plane"
+)
+
+// A drawing puts a scene on the data area of a plot.
+type drawing struct {
+	scene *scene
+	left  int // labels that found no room, known when drawn
+}
+
+// A sheet is a drawing on one canvas.
+type sheet struct {
+	draw.Canvas
+	plot *plot.Plot
+	room plane.Room
+}
+
+// Plot draws the scene: lines first, then marks, then labels where room is left.
+func (d *drawing) Plot(c draw.Canvas, p *plot.Plot) {
+	frame := c.Rectangle
+	frame.Min.X += 3
+	frame.Min.Y += 3
+	frame.Max.X += cropRight - 3
+	frame.Max.Y += cropTop - 3
+	s := &sheet{Canvas: c, plot: p, room: plane.Room{Frame: frame}}
+	for _, cv := range d.scene.curves {
+		s.curve(cv)
+	}
+	spots := s.marks(d.scene.marks)
+	s.spans(d.scene.spans)
+	d.left = s.markLabels(spots) + s.curveLabels(d.scene.curves)
+}
+
+// at returns where a place lies on the canvas.
+func (s *sheet) at(p place) vg.Point {
+	return vg.Point{X: s.X(s.norm(&s.plot.X, p.x)), Y: s.Y(s.norm(&s.plot.Y, p.y))}
+}
+
+// norm is Axis.Norm for any value: the logarithm of nothing lies far outside.
+func (s *sheet) norm(a *plot.Axis, v float64) float64 {
+	if _, log := a.Scale.(plot.LogScale); log && v <= 0 {
+		return math.Inf(-1)
+	}
+	return a.Norm(v)
+}
+
+// direction returns the tangent of a place on the canvas, NaN when unknown.
+func (s *sheet) direction(p place, dx, dy float64) vg.Point {
+	per := func(a *plot.Axis, v, d float64, length vg.Length) vg.Length {
+		if _, log := a.Scale.(plot.LogScale); log {
+			return vg.Length(d/v/math.Log(a.Max/a.Min)) * length
+		}
+		return vg.Length(d/(a.Max-a.Min)) * length
+	}
+	size := s.Size()
+	return vg.Point{X: per(&s.plot.X, p.x, dx, size.X), Y: per(&s.plot.Y, p.y, dy, size.Y)}
+}
+
+// curve draws a branch and keeps labels off it.
+func (s *sheet) curve(c curve) {
+	for _, r := range c.runs {
+		for _, line := range s.lines(r) {
+			s.StrokeLines(lineStyle(c, r.line), line)
+			s.room.BlockLine(line)
+		}
+	}
+}
+
+// lines returns what is seen of a run.
+func (s *sheet) lines(r run) [][]vg.Point {
+	knots := make([]plane.Knot, len(r.places))
+	for i, p := range r.places {
+		knots[i] = plane.Knot{At: s.at(p), Tangent: s.direction(p, p.dx, p.dy)}
+	}
+	var out [][]vg.Point
+	for _, piece := range plane.Clip(plane.Smooth(knots), s.Rectangle) {
+		out = append(out, plane.Thin(piece, 0.04))
+	}
+	return out
+}
+
+func lineStyle(c curve, kind lineKind) draw.LineStyle {
+	style := draw.LineStyle{Color: c.ink, Width: lineWidth}
+	switch kind {
+	case dashed:
+		style.Dashes = dashes
+	case dotted:
+		style.Dashes = dots
+	}
+	return style
+}
+
+// A spot is a mark on the canvas.
+type spot struct {
+	mark
+	centre vg.Point
+	reach  vg.Length // of the drawn mark, for its label
+	prefer vg.Point  // side of the label
+}
+
+// marks draws special points and steady states that lie in the frame.
+func (s *sheet) marks(list []mark) []spot {
+	var spots []spot
+	for _, m := range list {
+		sp := spot{mark: m, centre: s.at(m.place), reach: 4}
+		if !s.Contains(sp.centre) {
+			continue
+		}
+		u := unit(s.direction(m.place, m.dx, m.dy))
+		switch m.kind {
+		case "fold":
+			s.fold(&sp, u)
+		case "simple stationary bifurcation":
+			s.crossing(&sp, u)
+		case "Hopf point":
+			s.ring(&sp, u)
+		default:
+			s.dot(&sp)
+		}
+		spots = append(spots, sp)
+	}
+	return spots
+}
+
+// unit returns the direction of v, upright when v is unknown.
+func unit(v vg.Point) vg.Point {
+	n := vg.Length(math.Hypot(float64(v.X), float64(v.Y)))
+	if !(n > 0) || math.IsInf(float64(n), 0) {
+		return vg.Point{Y: 1}
+	}
+	return vg.Point{X: v.X / n, Y: v.Y / n}
+}
+
+func along(p, u vg.Point, by vg.Length) vg.Point { return vg.Point{X: p.X + by*u.X, Y: p.Y + by*u.Y} }
+
+func normal(u vg.Point) vg.Point { return vg.Point{X: -u.Y, Y: u.X} }
+
+// bar strokes a line through a point.
+func (s *sheet) bar(style draw.LineStyle, c, u vg.Point, half vg.Length) {
+	s.StrokeLines(style, []vg.Point{along(c, u, -half), along(c, u, half)})
+}
+
+// block keeps labels off a square about a point.
+func (s *sheet) block(c vg.Point, half vg.Length) {
+	s.room.Block(vg.Rectangle{
+		Min: vg.Point{X: c.X - half, Y: c.Y - half},
+		Max: vg.Point{X: c.X + half, Y: c.Y + half},
+	})
+}
+
+// fold draws the bar along the tangent at the turn.
+func (s *sheet) fold(sp *spot, u vg.Point) {
+	const half = 7
+	s.bar(draw.LineStyle{Color: accent, Width: barWidth}, sp.centre, u, half)
+	s.room.BlockLine([]vg.Point{along(sp.centre, u, -half), along(sp.centre, u, half)})
+	s.block(sp.centre, 2)
+	sp.prefer = vg.Point{X: vg.Length(-sp.away)}
+	if sp.away == 0 {
+		sp.prefer = normal(u)
+	}
+}
+
+// crossing draws the branch's tangent and, across it, the null vector of f_x. A
+// null vector that lies along the branch or is not seen in this picture gives way
+// to the normal.
+func (s *sheet) crossing(sp *spot, u vg.Point) {
+	const half = 8
+	v := unit(s.direction(sp.place, sp.vx, sp.vy))
+	known := !math.IsNaN(sp.vx) && !math.IsNaN(sp.vy) && (sp.vx != 0 || sp.vy != 0)
+	if !known || math.Abs(float64(u.X*v.Y-u.Y*v.X)) < 0.2 {
+		v = normal(u)
+	}
+	style := draw.LineStyle{Color: ink, Width: 2.25}
+	for _, d := range []vg.Point{u, v} {
+		s.bar(style, sp.centre, d, half)
+		s.room.BlockLine([]vg.Point{along(sp.centre, d, -half), along(sp.centre, d, half)})
+	}
+	s.block(sp.centre, 2)
+	sp.prefer = along(unit(vg.Point{X: u.X + v.X, Y: u.Y + v.Y}), vg.Point{Y: 1}, 0.5)
+}
+
+// ring draws a small ring with a tick along the normal of the branch.
+func (s *sheet) ring(sp *spot, u vg.Point) {
+	const radius = 3.2
+	n := normal(u)
+	if n.Y < 0 {
+		n = vg.Point{X: -n.X, Y: -n.Y}
+	}
+	var path vg.Path
+	path.Move(vg.Point{X: sp.centre.X + radius, Y: sp.centre.Y})
+	path.Arc(sp.centre, radius, 0, 2*math.Pi)
+	path.Close()
+	s.SetColor(plate)
+	s.Fill(path)
+	style := draw.LineStyle{Color: ink, Width: 1.2}
+	s.SetLineStyle(style)
+	s.Stroke(path)
+	s.StrokeLines(style, []vg.Point{along(sp.centre, n, -radius), along(sp.centre, n, -radius-4)})
+	s.block(sp.centre, radius+1)
+	s.room.BlockLine([]vg.Point{sp.centre, along(sp.centre, n, -radius-4)})
+	sp.prefer, sp.reach = n, 5
+}
+
+// dot draws a steady state.
+func (s *sheet) dot(sp *spot) {
+	const radius = 2.6
+	s.SetColor(ink)
+	var path vg.Path
+	path.Move(vg.Point{X: sp.centre.X + radius, Y: sp.centre.Y})
+	path.Arc(sp.centre, radius, 0, 2*math.Pi)
+	path.Close()
+	s.Fill(path)
+	s.block(sp.centre, radius+0.5)
+}

@@ -1,0 +1,89 @@
+package display
+
+import (
+	"math"
+	"os"
+	"path/filepath"
+	"testing"
+
+	"brinkline/continuation"
+)
+
+// TestGallery draws the pictures that are looked at by eye into the folder that
+// BRINKLINE_GALLERY names.
+func TestGallery(t *testing.T) {
+	dir := os.Getenv("BRINKLINE_GALLERY")
+	if dir == "" {
+		t.Skip("set BRINKLINE_GALLERY to a folder to draw the pictures there")
+	}
+	for name, f := range gallery(t) {
+		for _, ext := range []string{".svg", ".png"} {
+			if err := f.Save(filepath.Join(dir, name+ext)); err != nil {
+				t.Errorf("%s: %v", name, err)
+			}
+		}
+		t.Log(name, f)
+	}
+}
+
+func gallery(t testing.TB) map[string]*Figure {
+	start := tankStart(t)
+	path := follow(t, start, "Coolant", continuation.Within(280, 320))
+	figures := map[string]*Figure{
+		"tank":       Plot(path).Y("Temperature"),
+		"conversion": Plot(path, Mark(start, "today")),
+		"strut":      Plot(strutBranch(t)),
+		"lakes":      Plot(lakeBranch(t, 0.7), lakeBranch(t, 0.8), lakeBranch(t, 0.9), lakeBranch(t, 1)),
+		"feeder":     Plot(feederBranch(t)).Y("Voltage"),
+		"wheel":      Plot(wheelBranch(t)),
+		"small":      Plot(tinyBranch(t, 1e-9, 1e6)),
+		"folds":      Plot(waveBranch(t)),
+		"close":      Plot(closeFolds(t)),
+		"closezoom":  Plot(closeFolds(t)).RangeX(0.999999, 1.000002).RangeY(-0.02, 0.02),
+		"logs":       Plot(lakeBranch(t, 0.7)).LogY().LogX().RangeX(0.1, 30).RangeY(0.1, 100),
+	}
+	if fold, err := path.LimitAbove(start); err == nil {
+		m, err := start.MarginTo(fold)
+		if err != nil {
+			t.Fatal(err)
+		}
+		figures["margin"] = Plot(path, m).Y("Temperature")
+	} else {
+		t.Log(err)
+	}
+	return figures
+}
+
+type oneState struct{ X float64 }
+type oneParams struct {
+	Push float64 `unit:"N"`
+}
+
+// tinyBranch is an S whose state and parameter have the given sizes.
+func tinyBranch(t testing.TB, size, scale float64) *continuation.Branch {
+	f := func(s oneState, q oneParams) oneState {
+		x := s.X / size
+		return oneState{q.Push/scale + x - x*x*x}
+	}
+	m := newModel(t, f, oneParams{Push: -scale}, continuation.Named("switch"))
+	return follow(t, settle(t, m, oneState{-1.3 * size}), "Push", continuation.Within(-scale, scale))
+}
+
+// waveBranch has many folds one above the other.
+func waveBranch(t testing.TB) *continuation.Branch {
+	f := func(s oneState, q oneParams) oneState {
+		return oneState{q.Push - math.Sin(2*s.X)*2 - 0.15*s.X}
+	}
+	m := newModel(t, f, oneParams{Push: 0}, continuation.Named("wave"))
+	return follow(t, settle(t, m, oneState{0}), "Push", continuation.Within(-4, 4))
+}
+
+// closeFolds has two folds whose parameters differ by 1e-6.
+func closeFolds(t testing.TB) *continuation.Branch {
+	const a = 0.00908560296 // 4/(3 sqrt 3) a^3 = 1e-6 / 2
+	f := func(s oneState, q oneParams) oneState {
+		return oneState{q.Push - 1 + a*a*s.X - s.X*s.X*s.X}
+	}
+	m := newModel(t, f, oneParams{Push: 0.5}, continuation.Named("pinch"))
+	return follow(t, settle(t, m, oneState{-0.8}), "Push", continuation.Within(0.5, 1.5))
+}

@@ -1,0 +1,257 @@
+package plane
+
+import (
+	"math"
+
+	"gonum.org/v1/plot/vg"
+)
+
+// Room is the place on a picture and what already stands there.
+type Room struct {
+	Frame vg.Rectangle
+	boxes []vg.Rectangle
+	lines [][]vg.Point
+}
+
+// Block keeps labels off a rectangle.
+func (r *Room) Block(box vg.Rectangle) { r.boxes = append(r.boxes, box) }
+
+// BlockLine keeps labels off a line.
+func (r *Room) BlockLine(line []vg.Point) {
+	if len(line) > 1 {
+		r.lines = append(r.lines, line)
+	}
+}
+
+// Free reports whether a rectangle lies in the frame and on nothing.
+func (r *Room) Free(box vg.Rectangle) bool {
+	return inside(box, r.Frame) && !r.taken(box) && r.crossings(box) == 0
+}
+
+func (r *Room) taken(box vg.Rectangle) bool {
+	for _, b := range r.boxes {
+		if Overlap(b, box) {
+			return true
+		}
+	}
+	return false
+}
+
+// crossings counts the segments of lines that run through a rectangle.
+func (r *Room) crossings(box vg.Rectangle) int {
+	n := 0
+	for _, line := range r.lines {
+		for i := 1; i < len(line); i++ {
+			if touches(line[i-1], line[i], box) {
+				n++
+			}
+		}
+	}
+	return n
+}
+
+func touches(a, b vg.Point, box vg.Rectangle) bool {
+	if max(a.X, b.X) < box.Min.X || min(a.X, b.X) > box.Max.X || max(a.Y, b.Y) < box.Min.Y || min(a.Y, b.Y) > box.Max.Y {
+		return false
+	}
+	_, _, ok := ClipSegment(a, b, box)
+	return ok
+}
+
+// A Place is where a label goes.
+type Place struct {
+	Box    vg.Rectangle // of the text
+	Leader []vg.Point   // the line from the mark, nil when the label stands beside it
+	Cost   float64
+}
+
+// A Request asks for the place of a label of a given size about a mark.
+type Request struct {
+	Anchor vg.Point
+	Size   vg.Point
+	Prefer vg.Point  // direction away from the mark on which the label looks best
+	Reach  vg.Length // half the size of the mark
+}
+
+// margin is kept free about a label.
+const margin = vg.Length(1.5)
+
+var distances = []vg.Length{2, 6, 12, 20, 30, 44, 62, 84, 110}
+
+// Near finds a place for a label, as near to its mark and as far on the wanted
+// side as can be had. Farther labels get a leader. It reports false when there
+// is no room.
+func (r *Room) Near(q Request) (Place, bool) {
+	best, found := Place{Cost: math.Inf(1)}, false
+	for _, d := range distances {
+		for k := range 24 {
+			p := q.candidate(float64(k)*math.Pi/12, d)
+			if p.Cost >= best.Cost || !r.Free(grow(p.Box, margin)) {
+				continue
+			}
+			if p.Leader != nil {
+				n, ok := r.leaderCrossings(p.Leader, q)
+				p.Cost += 25 * float64(n)
+				if !ok || p.Cost >= best.Cost {
+					continue
+				}
+			}
+			best, found = p, true
+		}
+	}
+	return best, found
+}
+
+// Take blocks what a placed label covers.
+func (r *Room) Take(p Place) {
+	r.Block(p.Box)
+	r.BlockLine(p.Leader)
+}
+
+// candidate puts the label on a ray from the mark, its near edge at a distance.
+func (q Request) candidate(angle float64, d vg.Length) Place {
+	sin, cos := math.Sincos(angle)
+	u := vg.Point{X: vg.Length(cos), Y: vg.Length(sin)}
+	half := exit(q.Size, u)
+	far := q.Reach + d + half
+	c := vg.Point{X: q.Anchor.X + far*u.X, Y: q.Anchor.Y + far*u.Y}
+	p := Place{Box: vg.Rectangle{
+		Min: vg.Point{X: c.X - q.Size.X/2, Y: c.Y - q.Size.Y/2},
+		Max: vg.Point{X: c.X + q.Size.X/2, Y: c.Y + q.Size.Y/2},
+	}}
+	p.Cost = float64(d)
+	if n := length(q.Prefer); n > 0 {
+		p.Cost += 9 * (1 - float64(dot(q.Prefer, u)/n))
+	}
+	if d > 10 {
+		p.Cost += 8
+		p.Leader = []vg.Point{
+			{X: q.Anchor.X + (q.Reach+1)*u.X, Y: q.Anchor.Y + (q.Reach+1)*u.Y},
+			{X: c.X - (half+1)*u.X, Y: c.Y - (half+1)*u.Y},
+		}
+	}
+	return p
+}
+
+// leaderCrossings counts the lines that a leader crosses, and reports false when
+// it runs over a label or a mark other than its own.
+func (r *Room) leaderCrossings(leader []vg.Point, q Request) (int, bool) {
+	a, b := leader[0], leader[1]
+	for _, box := range r.boxes {
+		if touches(a, b, box) && !contains(grow(box, 1), q.Anchor) {
+			return 0, false
+		}
+	}
+	n := 0
+	for _, line := range r.lines {
+		for i := 1; i < len(line); i++ {
+			if meet(a, b, line[i-1], line[i]) {
+				n++
+			}
+		}
+	}
+	return n, true
+}
+
+// exit returns how far a ray from the centre of a rectangle of that size runs in
+// it.
+func exit(size, u vg.Point) vg.Length {
+	d := vg.Length(math.Inf(1))
+	if u.X != 0 {
+		d = min(d, size.X/2/abs(u.X))
+	}
+	if u.Y != 0 {
+		d = min(d, size.Y/2/abs(u.Y))
+	}
+	return d
+}
+
+// meet reports whether two segments cross.
+func meet(a, b, c, d vg.Point) bool {
+	side := func(p, q, r vg.Point) vg.Length {
+		return (q.X-p.X)*(r.Y-p.Y) - (q.Y-p.Y)*(r.X-p.X)
+	}
+	return side(a, b, c)*side(a, b, d) < 0 && side(c, d, a)*side(c, d, b) < 0
+}
+
+// Overlap reports whether two rectangles have more than an edge in common.
+func Overlap(a, b vg.Rectangle) bool {
+	return a.Min.X < b.Max.X && b.Min.X < a.Max.X && a.Min.Y < b.Max.Y && b.Min.Y < a.Max.Y
+}
+
+func inside(a, b vg.Rectangle) bool {
+	return a.Min.X >= b.Min.X && a.Max.X <= b.Max.X && a.Min.Y >= b.Min.Y && a.Max.Y <= b.Max.Y
+}
+
+func contains(box vg.Rectangle, p vg.Point) bool {
+	return p.X >= box.Min.X && p.X <= box.Max.X && p.Y >= box.Min.Y && p.Y <= box.Max.Y
+}
+
+func grow(box vg.Rectangle, by vg.Length) vg.Rectangle {
+	return vg.Rectangle{
+		Min: vg.Point{X: box.Min.X - by, Y: box.Min.Y - by},
+		Max: vg.Point{X: box.Max.X + by, Y: box.Max.Y + by},
+	}
+}
+
+func abs(v vg.Length) vg.Length { return max(v, -v) }
+
+// Corner returns the rectangle of that size in the corner of the frame on which
+// the fewest lines and labels lie, and what lies there.
+func (r *Room) Corner(size vg.Point) (vg.Rectangle, int) {
+	best, least := vg.Rectangle{}, math.MaxInt
+	for _, right := range []bool{true, false} {
+		for _, top := range []bool{true, false} {
+			box := r.corner(size, right, top)
+			n := r.crossings(box)
+			for _, b := range r.boxes {
+				if Overlap(b, box) {
+					n += 100
+				}
+			}
+			if n < least {
+				best, least = box, n
+			}
+		}
+	}
+	return best, least
+}
+
+func (r *Room) corner(size vg.Point, right, top bool) vg.Rectangle {
+	const inset = 4
+	at := vg.Point{X: r.Frame.Min.X + inset, Y: r.Frame.Min.Y + inset}
+	if right {
+		at.X = r.Frame.Max.X - inset - size.X
+	}
+	if top {
+		at.Y = r.Frame.Max.Y - inset - size.Y
+	}
+	return vg.Rectangle{Min: at, Max: vg.Point{X: at.X + size.X, Y: at.Y + size.Y}}
+}
+
+// Copy returns a room that can be filled on trial.
+func (r *Room) Copy() *Room {
+	return &Room{
+		Frame: r.Frame,
+		boxes: append([]vg.Rectangle(nil), r.boxes...),
+		lines: append([][]vg.Point(nil), r.lines...),
+	}
+}
+
+// Count returns how much lies on a rectangle: segments of lines, and labels.
+func (r *Room) Count(box vg.Rectangle) int {
+	n := r.crossings(box)
+	for _, b := range r.boxes {
+		if Overlap(b, box) {
+			n += 3
+		}
+	}
+	return n
+}
+
+// ToBox returns how far a point is from a rectangle, 0 in it.
+func ToBox(p vg.Point, box vg.Rectangle) vg.Length {
+	dx := max(box.Min.X-p.X, 0, p.X-box.Max.X)
+	dy := max(box.Min.Y-p.Y, 0, p.Y-box.Max.Y)
+	return length(vg.Point{X: dx, Y: dy})
+}

@@ -1,0 +1,173 @@
+package display
+
+import (
+	"errors"
+	"fmt"
+	"reflect"
+
+	"brinkline/continuation"
+)
+
+// An item is one thing that a figure draws: exactly one of its fields is set.
+type item struct {
+	branch  *continuation.Branch
+	point   *continuation.Point
+	special continuation.Special
+	margin  *continuation.Margin
+	word    string // before the value in a point's label
+	quiet   bool   // a point of a list: no label
+}
+
+// A Marked steady state has a word of the analyst's own in a figure; see [Mark].
+type Marked struct {
+	Point *continuation.Point
+	Word  string
+}
+
+// Mark gives a steady state the word that stands before its value in a figure:
+// Plot(path, Mark(start, "today")) says "today 300 K".
+func Mark(p *continuation.Point, word string) Marked { return Marked{p, word} }
+
+func (f *Figure) add(v any) error {
+	switch v := v.(type) {
+	case nil:
+		return errors.New("there is nothing to draw (nil)")
+	case error:
+		return v
+	case *continuation.Branch:
+		return f.put(v != nil, "branch", item{branch: v})
+	case *continuation.Point:
+		return f.put(v != nil, "steady state", item{point: v, word: "steady state"})
+	case Marked:
+		return f.put(v.Point != nil, "steady state", item{point: v.Point, word: v.Word})
+	case *continuation.Fold:
+		return f.put(v != nil, "fold", item{special: v})
+	case *continuation.BranchPoint:
+		return f.put(v != nil, "simple stationary bifurcation", item{special: v})
+	case *continuation.Hopf:
+		return f.put(v != nil, "Hopf point", item{special: v})
+	case *continuation.Margin:
+		return f.put(v != nil, "margin", item{margin: v})
+	}
+	return f.addOther(v)
+}
+
+func (f *Figure) put(ok bool, what string, it item) error {
+	if !ok {
+		return fmt.Errorf("there is no %s to draw (nil)", what)
+	}
+	f.items = append(f.items, it)
+	return nil
+}
+
+// brancher is what can give its branch, such as a walk.
+type brancher interface{ Branch() *continuation.Branch }
+
+// addOther takes slices of what can be drawn, and what has a branch.
+func (f *Figure) addOther(v any) error {
+	if b, ok := v.(brancher); ok && !isNil(v) {
+		return f.add(b.Branch())
+	}
+	list := reflect.ValueOf(v)
+	if list.Kind() != reflect.Slice && list.Kind() != reflect.Array {
+		return fmt.Errorf("a %T cannot be drawn; Plot takes branches, steady states, special points and margins", v)
+	}
+	for i := range list.Len() {
+		if err := f.add(list.Index(i).Interface()); err != nil {
+			return err
+		}
+		f.items[len(f.items)-1].quiet = true
+	}
+	return nil
+}
+
+func isNil(v any) bool {
+	if v == nil {
+		return true
+	}
+	switch r := reflect.ValueOf(v); r.Kind() {
+	case reflect.Pointer, reflect.Map, reflect.Slice, reflect.Func, reflect.Interface, reflect.Chan:
+		return r.IsNil()
+	}
+	return false
+}
+
+func (f *Figure) branches() []*continuation.Branch {
+	var list []*continuation.Branch
+	for _, it := range f.items {
+		if it.branch != nil {
+			list = append(list, it.branch)
+		}
+	}
+	return list
+}
+
+// specials returns the special points of all branches and those given alone,
+// each once.
+func (f *Figure) specials() []continuation.Special {
+	var list []continuation.Special
+	seen := map[*continuation.Point]bool{}
+	put := func(s continuation.Special) {
+		if !seen[s.Where()] {
+			seen[s.Where()] = true
+			list = append(list, s)
+		}
+	}
+	for _, it := range f.items {
+		switch {
+		case it.branch != nil:
+			for _, s := range it.branch.Specials() {
+				put(s)
+			}
+		case it.special != nil:
+			put(it.special)
+		case it.margin != nil:
+			put(it.margin.To)
+		}
+	}
+	return list
+}
+
+// models returns the models of all items, each once, in order.
+func (f *Figure) models() []*continuation.Model {
+	var list []*continuation.Model
+	put := func(m *continuation.Model) {
+		for _, have := range list {
+			if have == m {
+				return
+			}
+		}
+		list = append(list, m)
+	}
+	for _, it := range f.items {
+		put(it.model())
+	}
+	return list
+}
+
+func (it item) model() *continuation.Model {
+	switch {
+	case it.branch != nil:
+		return it.branch.Model()
+	case it.point != nil:
+		return it.point.Model()
+	case it.special != nil:
+		return it.special.Where().Model()
+	default:
+		return it.margin.From.Model()
+	}
+}
+
+// followed returns the parameter of the item, "" for a steady state alone.
+func (it item) followed() string {
+	switch {
+	case it.branch != nil:
+		return it.branch.Parameter().Name
+	case it.point != nil:
+		return it.point.Parameter
+	case it.special != nil:
+		return it.special.Where().Parameter
+	default:
+		return it.margin.Parameter.Name
+	}
+}

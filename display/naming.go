@@ -1,0 +1,70 @@
+package display
+
+import (
+	"fmt"
+	"strings"
+
+	"brinkline/continuation"
+)
+
+// names returns the labels of the branches: the analyst's, else what tells the
+// branches apart. A branch alone needs none.
+func (f *Figure) names() []string {
+	branches := f.branches()
+	names := make([]string, len(branches))
+	copy(names, f.labels)
+	if len(f.labels) > 0 || len(branches) < 2 {
+		return names
+	}
+	for i, b := range branches {
+		names[i] = distinction(branches, b)
+	}
+	for i, name := range names {
+		if name == "" || repeated(names, name) > 1 {
+			names[i] = strings.TrimSpace(fmt.Sprintf("branch %d", i+1))
+		}
+	}
+	return names
+}
+
+func repeated(names []string, name string) int {
+	n := 0
+	for _, other := range names {
+		if other == name {
+			n++
+		}
+	}
+	return n
+}
+
+// distinction says how a branch differs from the others: the name of its model,
+// or the values of the parameters that are held and are not the same on all.
+func distinction(all []*continuation.Branch, b *continuation.Branch) string {
+	for _, other := range all {
+		if other.Model().Name() != b.Model().Name() {
+			return b.Model().Name()
+		}
+	}
+	var parts []string
+	for j, q := range b.Model().Parameters() {
+		if q.Name != b.Parameter().Name && differs(all, q.Name, held(b, j)) {
+			parts = append(parts, labelled(q.Variable, held(b, j), 5))
+		}
+	}
+	if len(parts) > 2 {
+		return ""
+	}
+	return strings.Join(parts, ", ")
+}
+
+func held(b *continuation.Branch, j int) float64 { return b.Points()[b.Start()].Parameters[j] }
+
+func differs(all []*continuation.Branch, name string, value float64) bool {
+	for _, b := range all {
+		v, err := b.Points()[b.Start()].At(name)
+		if err != nil || (v != value && b.Parameter().Name != name) {
+			return true
+		}
+	}
+	return false
+}

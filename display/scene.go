@@ -1,0 +1,212 @@
+package display
+
+import (
+	"errors"
+	"fmt"
+	"image/color"
+	"math"
+
+	"brinkline/continuation"
+)
+
+// A scene is what a figure draws, in the values that stand on its axes.
+type scene struct {
+	curves []curve
+	marks  []mark
+	spans  []span
+	x, y   side
+}
+
+// A curve is a branch.
+type curve struct {
+	runs  []run
+	ink   color.Color
+	label string
+}
+
+// A run is a part of a curve drawn with one kind of line.
+type run struct {
+	places []place
+	line   lineKind
+}
+
+type lineKind int
+
+const (
+	solid lineKind = iota
+	dashed
+	dotted // stability was not computed
+)
+
+// A place is a point of the figure with the tangent of its branch there, NaN
+// where it is unknown.
+type place struct{ x, y, dx, dy float64 }
+
+func (p place) finite() bool {
+	return !math.IsNaN(p.x) && !math.IsInf(p.x, 0) && !math.IsNaN(p.y) && !math.IsInf(p.y, 0)
+}
+
+// A mark is a special point or a steady state.
+type mark struct {
+	place
+	kind   string  // of a special point, empty for a steady state
+	vx, vy float64 // null vector at a stationary bifurcation
+	away   float64 // -1 where the curve turns to smaller x, +1 to greater, 0 else
+	label  string
+}
+
+// A span is a margin: an arrow from a steady state to a limit.
+type span struct {
+	from, to place
+	label    string
+}
+
+// place reads a point of a branch off both axes.
+func (s *scene) place(p *continuation.Point) (place, error) {
+	x, err := s.x.value(p)
+	if err != nil {
+		return place{}, err
+	}
+	y, err := s.y.value(p)
+	if err != nil {
+		return place{}, err
+	}
+	return place{x, y, s.x.slope(p), s.y.slope(p)}, nil
+}
+
+// scene turns the items of a figure into what is drawn.
+func (f *Figure) scene() (*scene, error) {
+	if len(f.items) == 0 {
+		return nil, errors.New("Plot has nothing to draw; give it a branch")
+	}
+	x, y, err := f.sides()
+	if err != nil {
+		return nil, err
+	}
+	s := &scene{x: x, y: y}
+	names := f.names()
+	for i, b := range f.branches() {
+		c := curve{ink: inks[i%len(inks)], label: names[i]}
+		if c.runs, err = s.runs(b, f.reference()); err != nil {
+			return nil, err
+		}
+		s.curves = append(s.curves, c)
+	}
+	if err := f.addMarks(s); err != nil {
+		return nil, err
+	}
+	if len(s.curves)+len(s.marks) == 0 || !s.anywhere() {
+		return nil, fmt.Errorf("there is nothing to see: %s against %s has no finite value", y.what(), x.what())
+	}
+	return s, nil
+}
+
+// reference is the number of eigenvalues with positive real part that a balance
+// has at the start of the first branch; its stretches with that number are solid.
+func (f *Figure) reference() int {
+	for _, b := range f.branches() {
+		if b.Model().Balance() {
+			return countAtStart(b)
+		}
+	}
+	return 0
+}
+
+func countAtStart(b *continuation.Branch) int {
+	for _, s := range b.Stretches() {
+		if s.From <= b.Start() && b.Start() <= s.To {
+			return s.Unstable
+		}
+	}
+	return b.Points()[b.Start()].Unstable
+}
+
+func lineOf(b *continuation.Branch, unstable, reference int) lineKind {
+	usual := 0
+	if b.Model().Balance() {
+		usual = reference
+	}
+	switch {
+	case unstable < 0:
+		return dotted
+	case unstable == usual:
+		return solid
+	default:
+		return dashed
+	}
+}
+
+// runs cuts a branch into its stretches, and where a value is not finite.
+func (s *scene) runs(b *continuation.Branch, reference int) ([]run, error) {
+	places := make([]place, len(b.Points()))
+	for i, p := range b.Points() {
+		var err error
+		if places[i], err = s.place(p); err != nil {
+			return nil, err
+		}
+	}
+	s.estimate(places)
+	var runs []run
+	for _, stretch := range b.Stretches() {
+		line := lineOf(b, stretch.Unstable, reference)
+		for _, part := range finiteParts(places[stretch.From : stretch.To+1]) {
+			runs = append(runs, run{part, line})
+		}
+	}
+	return runs, nil
+}
+
+func finiteParts(places []place) [][]place {
+	var parts [][]place
+	from := 0
+	for i := 0; i <= len(places); i++ {
+		if i < len(places) && places[i].finite() {
+			continue
+		}
+		if i > from {
+			parts = append(parts, places[from:i])
+		}
+		from = i + 1
+	}
+	return parts
+}
+
+// estimate gives the curve no tangents where one axis has none: it is drawn
+// straight from point to point then, and shows nothing that was not computed.
+func (s *scene) estimate(places []place) {
+	for i := range places {
+		if math.IsNaN(places[i].dx) || math.IsNaN(places[i].dy) {
+			places[i].dx, places[i].dy = math.NaN(), math.NaN()
+		}
+	}
+}
+
+// anywhere reports whether there is anything finite.
+func (s *scene) anywhere() bool {
+	xs, ys := s.values()
+	return len(xs) > 0 && len(ys) > 0
+}
+
+// values lists what stands on the axes, for their ranges.
+func (s *scene) values() (xs, ys []float64) {
+	put := func(p place) {
+		if p.finite() {
+			xs, ys = append(xs, p.x), append(ys, p.y)
+		}
+	}
+	for _, c := range s.curves {
+		for _, r := range c.runs {
+			for _, p := range r.places {
+				put(p)
+			}
+		}
+	}
+	for _, m := range s.marks {
+		put(m.place)
+	}
+	for _, sp := range s.spans {
+		put(sp.from)
+		put(sp.to)
+	}
+	return xs, ys
+}
