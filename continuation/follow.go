@@ -43,6 +43,7 @@ func begin(p *Point, j int, plan *plan) (*tracer, error) {
 	}
 	s := newSystem(p.model, p.State, p.Parameters, j)
 	t := newTracer(s, plan)
+	t.learn(p.sizes)
 	lambda := p.Parameters[j]
 	if err := t.setScales(p.State, lambda); err != nil {
 		return nil, fmt.Errorf("no start: %w", err)
@@ -104,6 +105,20 @@ func negated(v []float64) []float64 {
 	return w
 }
 
+// learn takes over sizes from the run that the start comes from.
+func (t *tracer) learn(from *sizes) {
+	if from == nil {
+		return
+	}
+	for i, v := range from.states {
+		if !t.s.tagged[i] {
+			t.s.sx[i] = math.Max(t.s.sx[i], v)
+			t.known[i] = v
+		}
+	}
+	copy(t.most, from.equations)
+}
+
 // check looks at what the options say about this start.
 func (plan *plan) check(p *Point, j int) error {
 	q := p.model.parameters[j]
@@ -140,6 +155,7 @@ func (t *tracer) stand(a *node) error {
 	if err := t.evaluate(a); err != nil {
 		return fmt.Errorf("no start: %w", err)
 	}
+	t.naturalRows()
 	direction, err := t.onlyTangent(a)
 	if err != nil {
 		return err
@@ -173,7 +189,7 @@ func (t *tracer) onlyTangent(a *node) ([]float64, error) {
 		return nil, &refusal{reason: "the singular values at the start did not converge"}
 	}
 	values := svd.Values(nil)
-	if values[len(values)-1] < 1e-9*values[0] {
+	if values[len(values)-1] < 1e-9 {
 		return nil, fmt.Errorf("the start at %s is a singular point where branches cross (or every equation is flat there): settle a start away from it", t.where(a))
 	}
 	var v mat.Dense
@@ -357,6 +373,7 @@ func (t *tracer) point(a *node) *Point {
 		State: a.x, Parameters: append([]float64(nil), t.s.p...), Parameter: t.s.m.parameters[t.s.free].Name,
 		Eigenvalues: a.eigenvalues, Unstable: a.unstable,
 		StepLength: a.step, Arclength: a.arc, Iterations: a.iterations, model: t.s.m, free: t.s.free,
+		sizes: &sizes{t.s.sx, t.most},
 	}
 	p.Parameters[t.s.free] = a.lambda
 	p.Tangent = make([]float64, len(a.t))

@@ -30,7 +30,12 @@ type Point struct {
 
 	model *Model
 	free  int // index of Parameter, -1 for none
+	sizes *sizes
 }
+
+// sizes are what a run has learnt of the sizes of states and equations; a run
+// that starts from one of its points begins with them.
+type sizes struct{ states, equations []float64 }
 
 // Model returns the model that the point belongs to.
 func (p *Point) Model() *Model { return p.model }

@@ -86,6 +86,9 @@ func (t *tracer) reach(a *node, ds float64) (*node, error) {
 	if err := t.complete(b, border, a.t); err != nil {
 		return nil, err
 	}
+	if t.plan.local == natural && (b.t[t.n] > 0) != (a.t[t.n] > 0) {
+		return nil, &refusal{reason: "the parameter turns back"}
+	}
 	cos := dot(a.t, b.t)
 	if turn := math.Acos(math.Max(-1, math.Min(1, cos))); turn > t.plan.maxTurn {
 		return nil, &refusal{reason: fmt.Sprintf("the tangent turns by %.2g radians", turn)}

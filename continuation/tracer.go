@@ -32,16 +32,17 @@ type node struct {
 // so the length of z weighs the states by their mean square, and a large system
 // steps like a small one.
 type tracer struct {
-	s    *system
-	plan *plan
-	n    int
-	S    []float64 // n+1 scales
-	rows []float64 // n sizes of the equations by which they are scaled just now
-	most []float64 // the largest sizes of the equations met so far
-	jac  []float64 // n x (n+1), the last Jacobian, in the user's units
-	f    []float64
-	lu   linalg.LU
-	eig  linalg.Eigen
+	s     *system
+	plan  *plan
+	n     int
+	S     []float64 // n+1 scales
+	rows  []float64 // n sizes of the equations by which they are scaled just now
+	known []float64 // sizes of states learnt from an earlier run, 0 for none
+	most  []float64 // the largest sizes of the equations met so far
+	jac   []float64 // n x (n+1), the last Jacobian, in the user's units
+	f     []float64
+	lu    linalg.LU
+	eig   linalg.Eigen
 
 	tolerance float64 // of the corrector just now
 
@@ -58,7 +59,7 @@ func newTracer(s *system, p *plan) *tracer {
 	t := &tracer{s: s, plan: p, n: s.n, ds: p.first, tolerance: p.tolerance}
 	t.S = make([]float64, s.n+1)
 	t.rows, t.most, t.f = make([]float64, s.n), make([]float64, s.n), make([]float64, s.n)
-	t.jac = make([]float64, s.n*(s.n+1))
+	t.jac, t.known = make([]float64, s.n*(s.n+1)), make([]float64, s.n)
 	return t
 }
 
@@ -69,6 +70,9 @@ func (t *tracer) setScales(x []float64, lambda float64) error {
 	size := t.s.sp[t.s.free]
 	if !math.IsInf(width, 0) {
 		size = width
+		if t.s.m.parameters[t.s.free].Scale == 0 {
+			t.s.sp[t.s.free] = math.Max(math.Abs(lambda), 0.1*width)
+		}
 	}
 	t.S[t.n] = size
 	if err := t.s.Fz(x, lambda, t.jac); err != nil {
@@ -83,6 +87,7 @@ func (t *tracer) setScales(x []float64, lambda float64) error {
 		// A state that is 0 at the start takes its size from how fast it leaves
 		// it: that follows its unit, which a fixed number would not.
 		s := math.Max(math.Abs(x[i]), 0.1*size*math.Abs(slopes[i]))
+		s = math.Max(s, t.known[i])
 		if unknown[i] = s == 0; unknown[i] {
 			s = 1
 		}
