@@ -94,7 +94,8 @@ func (g *graph) trace(n node) {
 		v = g.leaf(n)
 	default:
 		var x [3]float64
-		for k, id := range [...]int32{n.a, n.b, n.c}[:kinds[n.op].arity] {
+		ids, count := n.operands()
+		for k, id := range ids[:count] {
 			x[k] = g.sample[id]
 		}
 		v = apply(n.op, x[0], x[1], x[2], int(n.c))
