@@ -7,10 +7,13 @@ import (
 	"github.com/yuin/goldmark/parser"
 	"github.com/yuin/goldmark/text"
 	"github.com/yuin/goldmark/util"
+
+	"brinkline/kernel/report/internal/formula"
 )
 
 // Formulas between dollar signs are kept from markdown, to which _ and * mean
-// something, and shown as they are written.
+// something. Those in a notation that package formula does not know are shown as
+// they are written.
 
 var (
 	kindMath      = ast.NewNodeKind("Math")
@@ -20,6 +23,7 @@ var (
 type mathNode struct {
 	ast.BaseInline
 	formula []byte
+	display bool // between $$ and $$: set in a line of its own
 }
 
 func (*mathNode) Kind() ast.NodeKind         { return kindMath }
@@ -57,7 +61,7 @@ func (mathSpan) Parse(_ ast.Node, block text.Reader, _ parser.Context) ast.Node 
 		return nil
 	}
 	block.Advance(2*len(mark) + end)
-	return &mathNode{formula: bytes.TrimSpace(formula)}
+	return &mathNode{formula: bytes.TrimSpace(formula), display: len(mark) == 2}
 }
 
 // mathBlock parses a formula in lines of its own between $$ and $$.
@@ -109,15 +113,25 @@ func (mathBlock) CanAcceptIndentedLine() bool { return false }
 
 func renderMath(w util.BufWriter, _ []byte, node ast.Node, entering bool) (ast.WalkStatus, error) {
 	if entering {
-		_, _ = w.WriteString(`<code class="math">` + escaped(string(node.(*mathNode).formula)) + `</code>`)
+		n := node.(*mathNode)
+		source := string(n.formula)
+		element, ok := formula.MathML(source, n.display)
+		if !ok {
+			element = `<code class="math">` + escaped(source) + `</code>`
+		}
+		_, _ = w.WriteString(element)
 	}
 	return ast.WalkSkipChildren, nil
 }
 
 func renderMathBlock(w util.BufWriter, source []byte, node ast.Node, entering bool) (ast.WalkStatus, error) {
 	if entering {
-		formula := bytes.TrimRight(node.Lines().Value(source), "\n")
-		_, _ = w.WriteString(`<pre class="math">` + escaped(string(formula)) + "</pre>\n")
+		written := string(bytes.TrimRight(node.Lines().Value(source), "\n"))
+		element, ok := formula.MathML(written, true)
+		if !ok {
+			element = `<pre class="math">` + escaped(written) + `</pre>`
+		}
+		_, _ = w.WriteString(element + "\n")
 	}
 	return ast.WalkSkipChildren, nil
 }

@@ -123,6 +123,10 @@ func plainText(node ast.Node, source []byte) string {
 			if entering {
 				b.Write(n.Value)
 			}
+		case *mathNode:
+			if entering {
+				b.Write(n.formula)
+			}
 		}
 		return ast.WalkContinue, nil
 	})

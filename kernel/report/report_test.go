@@ -160,7 +160,7 @@ func TestPageTellsWhatTheNotebookHolds(t *testing.T) {
 		`<td style="text-align:right">100 L</td>`,
 		`<th scope="col" style="text-align: right">Coolant (K)</th>`,
 		`<figure><svg xmlns="http://www.w3.org/2000/svg"`,
-		`<code class="math">\dot x = -\frac{F}{V} x + k(T)(1-x)</code>`,
+		`application/x-tex">\dot x = -\frac{F}{V} x + k(T)(1-x)</annotation>`,
 		`Costs went from $5 to $10. H<sub>2</sub>O.`,
 		`aria-label="standard error">slow place near 303 K</pre>`,
 		`This run stopped at <a href="#cell-8">cell 4</a>; the cells after it were not run.`,
