@@ -3,6 +3,7 @@ package continuation
 import (
 	"fmt"
 	"math"
+	"slices"
 )
 
 // A Branch is a curve of steady states: the points of a run in the order in which
@@ -240,7 +241,9 @@ func (b *Branch) wrap(i int) int {
 	return i
 }
 
-// locate returns the index of the point of the branch that p is.
+// locate returns the index of the point of the branch that p is: p itself, or the
+// same steady state to the accuracy of a corrector. A run polishes its start, so
+// that the analyst's own copy of it differs by rounding.
 func (b *Branch) locate(p *Point) (int, error) {
 	if p == nil {
 		return 0, fmt.Errorf("there is no point to look from (nil)")
@@ -248,26 +251,32 @@ func (b *Branch) locate(p *Point) (int, error) {
 	if p.model != b.model {
 		return 0, fmt.Errorf("the point belongs to another model")
 	}
+	sizes := make([]float64, len(b.model.states))
 	for i, q := range b.points {
-		if p == q || samePoint(p, q) {
+		if p == q {
+			return i, nil
+		}
+		for k, x := range q.State {
+			sizes[k] = math.Max(sizes[k], math.Abs(x))
+		}
+	}
+	for i, q := range b.points {
+		if samePoint(p, q, sizes) {
 			return i, nil
 		}
 	}
 	return 0, fmt.Errorf("%s is not a point of this branch, which begins at %s", p, b.points[b.start])
 }
 
-func samePoint(p, q *Point) bool {
+// samePoint reports whether two points have the same parameters, and states that
+// agree to rounding in the sizes that they take on the branch.
+func samePoint(p, q *Point, sizes []float64) bool {
 	for i := range p.State {
-		if p.State[i] != q.State[i] {
+		if math.Abs(p.State[i]-q.State[i]) > 1e-9*sizes[i] {
 			return false
 		}
 	}
-	for i := range p.Parameters {
-		if p.Parameters[i] != q.Parameters[i] {
-			return false
-		}
-	}
-	return true
+	return slices.Equal(p.Parameters, q.Parameters)
 }
 
 // Range returns the least and the greatest value of the parameter on the branch.
