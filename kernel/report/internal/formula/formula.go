@@ -189,7 +189,7 @@ func (p *parser) command(name string) (string, error) {
 	}
 	if mark, ok := accents[word]; ok {
 		base, err := p.atom()
-		return `<mover accent="true">` + group(base) + tag("mo", mark) + "</mover>", err
+		return accented(base, mark), err
 	}
 	if functions[word] {
 		return tag("mi", word) + "<mo>\u2061</mo>", nil
@@ -207,6 +207,18 @@ func (p *parser) command(name string) (string, error) {
 		return p.upright(word)
 	}
 	return "", errUnknown
+}
+
+// accented puts a mark over something. Over one letter it becomes part of the
+// letter, because browsers place it badly where no font for mathematics is
+// installed.
+func accented(base, mark string) string {
+	letter := strings.TrimSuffix(strings.TrimPrefix(strings.TrimSuffix(strings.TrimPrefix(base, "<mrow>"), "</mrow>"), "<mi>"), "</mi>")
+	combining, ok := combiningMarks[mark]
+	if ok && utf8.RuneCountInString(letter) == 1 {
+		return `<mi style="font-style:italic">` + letter + combining + "</mi>"
+	}
+	return `<mover accent="true">` + group(base) + tag("mo", mark) + "</mover>"
 }
 
 func (p *parser) fraction() (string, error) {

@@ -35,6 +35,8 @@ var (
 
 	accents = pairs(`dot ˙ ddot ¨ bar ¯ overline ¯ hat ^ widehat ^ tilde ~ widetilde ~ vec →`)
 
+	combiningMarks = map[string]string{"˙": "\u0307", "¨": "\u0308", "¯": "\u0304", "^": "\u0302", "~": "\u0303"}
+
 	spaces = pairs(`, 0.17em : 0.22em ; 0.28em ! -0.17em quad 1em qquad 2em`)
 
 	functions = names(`sin cos tan sinh cosh tanh arctan arcsin arccos exp ln log lim max min sup inf det rank tr arg`)
