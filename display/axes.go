@@ -3,6 +3,7 @@ package display
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"gonum.org/v1/plot"
 	"gonum.org/v1/plot/vg"
@@ -169,4 +170,30 @@ func (s side) widen(low, high float64) (float64, float64) {
 		return low - 0.1*size, high + 0.1*size
 	}
 	return low - room*(high-low), high + room*(high-low)
+}
+
+// roomForFolds widens an x axis that was not set where the label of a fold would
+// find no room on the empty side of its turn, by at most a fifth.
+func (s *scene) roomForFolds(a *plot.Axis, length vg.Length) {
+	if s.x.shown.set || s.x.log {
+		return
+	}
+	low, high := a.Min, a.Max
+	for _, m := range s.marks {
+		if m.away == 0 {
+			continue
+		}
+		need := float64((textSize(spell(m.label), labelSize).X + 12) / length)
+		if m.away < 0 {
+			high = max(high, (m.x-need*a.Min)/(1-need))
+		} else {
+			low = min(low, (m.x-need*a.Max)/(1-need))
+		}
+	}
+	if xs, _ := s.values(); slices.Min(xs) >= 0 {
+		low = a.Min // what cannot be negative gets no negative axis
+	}
+	const most = 0.2
+	span := a.Max - a.Min
+	a.Min, a.Max = max(low, a.Min-most*span), min(high, a.Max+most*span)
 }

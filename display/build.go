@@ -23,6 +23,7 @@ func (f *Figure) build() (*picture, error) {
 	if err := s.x.fit(&p.X, xs, f.width-60, false); err != nil {
 		return nil, err
 	}
+	s.roomForFolds(&p.X, f.width-60)
 	if err := s.y.fit(&p.Y, ys, height-45, true); err != nil {
 		return nil, err
 	}
@@ -53,8 +54,10 @@ func (f *Figure) notes(s *scene) []string {
 	}
 	var notes []string
 	for _, b := range f.branches() {
-		notes = append(notes, endsOf(b))
-		notes = append(notes, b.Notes()...)
+		notes = append(notes, sentenceCase(endsOf(b)))
+		for _, n := range b.Notes() {
+			notes = append(notes, sentenceCase(n))
+		}
 	}
 	return notes
 }
@@ -62,7 +65,7 @@ func (f *Figure) notes(s *scene) []string {
 func (f *Figure) wrapNotes(notes []string) []string {
 	var lines []string
 	for _, n := range notes {
-		lines = append(lines, wrap(spell(sentenceCase(n)), noteSize, f.width-12)...)
+		lines = append(lines, wrap(spell(n), noteSize, f.width-12)...)
 	}
 	const most = 8
 	if len(lines) > most {
@@ -81,13 +84,14 @@ func endsOf(b *continuation.Branch) string {
 	case ends[0].Text == ends[1].Text:
 		return text + "; the branch " + ends[0].Text + " (both ends)"
 	default:
-		return text + "; the branch " + ends[0].Text + ", and " + ends[1].Text
+		return text + "; the branch " + ends[0].Text + " and " + ends[1].Text
 	}
 }
 
+// sentenceCase makes a sentence of a remark.
 func sentenceCase(text string) string {
 	if text == "" || strings.HasSuffix(text, ".") {
-		return text
+		return capital(text)
 	}
-	return strings.ToUpper(text[:1]) + text[1:] + "."
+	return capital(text) + "."
 }

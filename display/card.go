@@ -25,20 +25,32 @@ func newCard(caption string, heads ...string) *Grid {
 
 // modelCard shows what a model is made of.
 func modelCard(m *continuation.Model) *Grid {
+	heads := []string{"value"}
+	if scaled(m) {
+		heads = append(heads, "typical size")
+	}
 	g := newCard(fmt.Sprintf("Model %s: %s, %s", m.Name(), count(len(m.States()), "state", "states"), count(len(m.Parameters()), "parameter", "parameters")),
-		"value", "typical size")
+		heads...)
 	g.heading("states")
-	for _, v := range m.States() {
-		g.add(v.Label(), "", sizeText(v.Scale))
+	n := len(m.States())
+	for i, v := range m.States() {
+		if g.skip(i, n) {
+			continue
+		}
+		g.add([]string{v.Label(), "", sizeText(v.Scale)}[:len(g.columns)]...)
 	}
 	g.heading("parameters")
-	for _, q := range m.Parameters() {
-		g.add(q.Label(), significant(q.Value, 10), sizeText(q.Scale))
+	n = len(m.Parameters())
+	for i, q := range m.Parameters() {
+		if g.skip(i, n) {
+			continue
+		}
+		g.add([]string{q.Label(), significant(q.Value, 10), sizeText(q.Scale)}[:len(g.columns)]...)
 	}
 	if names := m.Quantities(); len(names) > 0 {
 		g.heading("quantities")
 		for _, v := range names {
-			g.add(v.Label(), "", "")
+			g.add([]string{v.Label(), "", ""}[:len(g.columns)]...)
 		}
 	}
 	g.heading("setting")
@@ -47,9 +59,24 @@ func modelCard(m *continuation.Model) *Grid {
 	return g
 }
 
+// scaled reports whether the model gives a typical size of anything.
+func scaled(m *continuation.Model) bool {
+	for _, v := range m.States() {
+		if v.Scale > 0 {
+			return true
+		}
+	}
+	for _, q := range m.Parameters() {
+		if q.Scale > 0 {
+			return true
+		}
+	}
+	return false
+}
+
 func sizeText(scale float64) string {
 	if scale == 0 {
-		return "from the run"
+		return ""
 	}
 	return significant(scale, 6)
 }
@@ -95,16 +122,24 @@ func pointCard(p *continuation.Point) *Grid {
 
 // list adds a row for each variable, leaving out the middle of many.
 func (g *Grid) list(vars []continuation.Variable, values []float64, digits int) {
-	const most, ends = 16, 6
 	for i, v := range vars {
-		if len(vars) > most && i >= ends && i < len(vars)-ends {
-			if i == ends {
-				g.say("...", fmt.Sprintf("%d more", len(vars)-2*ends))
-			}
+		if g.skip(i, len(vars)) {
 			continue
 		}
 		g.add(v.Label(), significant(values[i], digits))
 	}
+}
+
+// skip reports whether row i of n stays out of a card, and says once how many do.
+func (g *Grid) skip(i, n int) bool {
+	const most, ends = 16, 6
+	if n <= most || i < ends || i >= n-ends {
+		return false
+	}
+	if i == ends {
+		g.say("...", fmt.Sprintf("%d more", n-2*ends))
+	}
+	return true
 }
 
 // stabilitySentence says in words what the eigenvalues mean.
@@ -119,6 +154,8 @@ func stabilitySentence(p *continuation.Point) string {
 		return fmt.Sprintf("unstable: %s with positive real part (of %d)", count(p.Unstable, "eigenvalue", "eigenvalues"), n)
 	case n == 1:
 		return "stable: the eigenvalue is negative"
+	case n == 2:
+		return "stable: both eigenvalues have negative real part"
 	default:
 		return fmt.Sprintf("stable: all %d eigenvalues have negative real part", n)
 	}
@@ -169,7 +206,7 @@ func (g *Grid) vectors(p *continuation.Point, right, left []float64) {
 		sort.Ints(order)
 	}
 	for _, i := range order {
-		g.add(vars[i].Label(), significant(p.State[i], stateDigits), significant(right[i], vectorDigits), significant(left[i], vectorDigits))
+		g.add(vars[i].Label(), significant(p.State[i], stateDigits), reliable(right[i], vectorDigits), reliable(left[i], vectorDigits))
 	}
 	if len(vars) > most {
 		g.say("...", fmt.Sprintf("%d of %d states, those with the largest entries of v", most, len(vars)))

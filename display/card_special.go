@@ -15,7 +15,7 @@ func foldCard(f *continuation.Fold) *Grid {
 	g.say("range test", fmt.Sprintf("wᵀ f_λ = %s, not 0: f_λ lies outside the range of f_x, so the branch turns in λ = %s; relative to its natural size %s",
 		significant(f.RangeTest, vectorDigits), q.Name, significant(f.RangeRelative, 3)))
 	g.say("quadratic coefficient", fmt.Sprintf("a = ½ wᵀ f_xx[v, v] = %s", significant(f.Quadratic, vectorDigits)))
-	g.say("curvature", fmt.Sprintf("−a/(wᵀ f_λ) = %s: %s − %s ≈ %s s² where x − x* ≈ s v",
+	g.say("curvature", fmt.Sprintf("-a/(wᵀ f_λ) = %s: %s - %s ≈ %s s² where x - x* ≈ s v",
 		significant(f.Curvature, vectorDigits), q.Name, valueText(f, 6), significant(f.Curvature, vectorDigits)))
 	g.note(normalisation(f.WeakLeft))
 	g.note(caution)
@@ -35,7 +35,9 @@ func specialCard(s continuation.Special, right, left []float64, uncertainty floa
 	if !isZero(s) {
 		text = reliable(p.Value(), s.Digits())
 	}
-	g.say(v.Name, withUnit(text, v.Unit))
+	cells := make([]string, len(g.columns))
+	cells[0], cells[1] = v.Label(), text
+	g.add(cells...)
 	g.say("digits", digitsText(s.Digits(), uncertainty, v.Unit))
 	g.heading("states")
 	if right != nil {
@@ -118,7 +120,7 @@ func marginCard(m *continuation.Margin) *Grid {
 	q := m.Parameter
 	g := newCard(fmt.Sprintf("Margin of %s in %s", m.From.Model().Name(), q.Name), "value")
 	value := func(v float64, digits int) string { return withUnit(significant(v, digits), q.Unit) }
-	g.add("now", value(q.Value, 10))
+	g.add("now", value(q.Value, 8))
 	g.add("limit ("+m.To.Kind()+")", withUnit(valueText(m.To, 8), q.Unit))
 	g.add("margin", value(m.Absolute, min(6, max(m.Digits(), 1))))
 	if math.IsNaN(m.Percent) {

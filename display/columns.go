@@ -44,8 +44,14 @@ func alignedTo(values []float64, digits []int) []string {
 func commonDecimals(values []float64, digits []int) (decimals int, ok bool) {
 	greatest, least := 0.0, math.Inf(1)
 	for _, v := range values {
-		if v != 0 && !math.IsNaN(v) && !math.IsInf(v, 0) {
-			greatest, least = max(greatest, math.Abs(v)), min(least, math.Abs(v))
+		if !math.IsNaN(v) && !math.IsInf(v, 0) {
+			greatest = max(greatest, math.Abs(v))
+		}
+	}
+	noise := 1e-12 * greatest // what rounding leaves of a 0
+	for _, v := range values {
+		if math.Abs(v) > noise {
+			least = min(least, math.Abs(v))
 		}
 	}
 	if greatest == 0 || greatest >= 1e7 || least < 1e-5 {
@@ -53,7 +59,7 @@ func commonDecimals(values []float64, digits []int) (decimals int, ok bool) {
 	}
 	fewest, most := math.MaxInt, math.MinInt
 	for i, v := range values {
-		if v == 0 || math.IsNaN(v) || math.IsInf(v, 0) {
+		if math.Abs(v) <= noise || math.IsNaN(v) || math.IsInf(v, 0) {
 			continue
 		}
 		d := min(max(digits[i], 3), 10) - 1 - exponentOf(v, digits[i])

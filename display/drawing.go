@@ -143,9 +143,12 @@ func along(p, u vg.Point, by vg.Length) vg.Point { return vg.Point{X: p.X + by*u
 
 func normal(u vg.Point) vg.Point { return vg.Point{X: -u.Y, Y: u.X} }
 
-// bar strokes a line through a point.
+// bar strokes a line through a point and keeps labels off it.
 func (s *sheet) bar(style draw.LineStyle, c, u vg.Point, half vg.Length) {
 	s.StrokeLines(style, []vg.Point{along(c, u, -half), along(c, u, half)})
+	for d := -half; d <= half; d += 2 {
+		s.block(along(c, u, d), style.Width/2+0.5)
+	}
 }
 
 // block keeps labels off a square about a point.
@@ -160,8 +163,6 @@ func (s *sheet) block(c vg.Point, half vg.Length) {
 func (s *sheet) fold(sp *spot, u vg.Point) {
 	const half = 7
 	s.bar(draw.LineStyle{Color: accent, Width: barWidth}, sp.centre, u, half)
-	s.room.BlockLine([]vg.Point{along(sp.centre, u, -half), along(sp.centre, u, half)})
-	s.block(sp.centre, 2)
 	sp.prefer = vg.Point{X: vg.Length(-sp.away)}
 	if sp.away == 0 {
 		sp.prefer = normal(u)
@@ -181,9 +182,7 @@ func (s *sheet) crossing(sp *spot, u vg.Point) {
 	style := draw.LineStyle{Color: ink, Width: 2.25}
 	for _, d := range []vg.Point{u, v} {
 		s.bar(style, sp.centre, d, half)
-		s.room.BlockLine([]vg.Point{along(sp.centre, d, -half), along(sp.centre, d, half)})
 	}
-	s.block(sp.centre, 2)
 	sp.prefer = along(unit(vg.Point{X: u.X + v.X, Y: u.Y + v.Y}), vg.Point{Y: 1}, 0.5)
 }
 

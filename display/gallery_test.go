@@ -42,7 +42,16 @@ func gallery(t testing.TB) map[string]*Figure {
 		"closezoom":  Plot(closeFolds(t)).RangeX(0.999999, 1.000002).RangeY(-0.02, 0.02),
 		"logs":       Plot(lakeBranch(t, 0.7)).LogY().LogX().RangeX(0.1, 30).RangeY(0.1, 100),
 	}
-	if fold, err := path.LimitAbove(start); err == nil {
+	shown := branchFigure(path)
+	figures["branch"] = shown
+	loud := branchFigure(lakeBranch(t, 0.7))
+	figures["loud"] = loud
+	figures["several"] = Plot(lakeBranch(t, 0.7), lakeBranch(t, 1)).Label("lake today", "lake flushed once a year").Title("Phosphorus against load")
+	figures["yfunc"] = Plot(path).YFunc("Heat (kW)", func(p *continuation.Point) float64 {
+		return 3 * (p.State[1] - p.Parameters[1])
+	}).Size(8.5, 6)
+	figures["plane"] = Plot(path, path.Folds()).X("Conversion").Y("Temperature")
+	if fold, err := path.LimitAbove(path.Points()[path.Start()]); err == nil {
 		m, err := start.MarginTo(fold)
 		if err != nil {
 			t.Fatal(err)

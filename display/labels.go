@@ -3,6 +3,7 @@ package display
 import (
 	"image/color"
 	"math"
+	"slices"
 	"sort"
 
 	"gonum.org/v1/plot/vg"
@@ -103,30 +104,52 @@ func (s *sheet) arrange(spots []spot, before func(a, b spot) bool) arrangement {
 	return a
 }
 
-// improve takes up one label after the other and puts it where it lies better now
-// that the others are known.
+// improve takes up one label after the other, and two that are neighbours, and
+// puts them where they lie better now that the others are known.
 func (s *sheet) improve(a *arrangement) {
-	for range 3 {
+	const near, rounds, most = 110, 3, 40
+	for range rounds {
 		changed := false
 		for i := range a.labels {
-			room := s.room.Copy()
-			for j, other := range a.labels {
-				if j != i {
-					room.Take(other.place)
+			changed = s.again(a, i) || changed
+			for j := 0; j < i && len(a.labels) <= most; j++ {
+				if distance(a.labels[i].spot.centre, a.labels[j].spot.centre) < near {
+					changed = s.again(a, i, j) || s.again(a, j, i) || changed
 				}
-			}
-			now := a.labels[i].place
-			p, ok := room.Near(a.labels[i].spot.request())
-			if ok && p.Cost < now.Cost-1e-9 {
-				a.cost += p.Cost - now.Cost
-				a.labels[i].place = p
-				changed = true
 			}
 		}
 		if !changed {
 			return
 		}
 	}
+}
+
+// again places some labels anew, in the order given, if that is better.
+func (s *sheet) again(a *arrangement, which ...int) bool {
+	room := s.room.Copy()
+	before, after := 0.0, 0.0
+	for k, l := range a.labels {
+		if slices.Contains(which, k) {
+			before += l.place.Cost
+		} else {
+			room.Take(l.place)
+		}
+	}
+	places := make([]plane.Place, len(which))
+	for n, k := range which {
+		p, ok := room.Near(a.labels[k].spot.request())
+		after += p.Cost
+		if !ok || after >= before-1e-9 {
+			return false
+		}
+		room.Take(p)
+		places[n] = p
+	}
+	for n, k := range which {
+		a.labels[k].place = places[n]
+	}
+	a.cost += after - before
+	return true
 }
 
 func (sp spot) request() plane.Request {
@@ -219,9 +242,12 @@ func distance(a, b vg.Point) vg.Length {
 }
 
 // rivals is the cost of other curves that lie near a label: it could be taken for
-// theirs.
+// theirs, less so when a leader shows where it belongs.
 func (s *sheet) rivals(p plane.Place, own curve, all []curve) float64 {
-	cost := 0.0
+	cost, reach := 0.0, 60.0
+	if p.Leader != nil {
+		reach = 24
+	}
 	for _, c := range all {
 		if c.ink == own.ink && c.label == own.label {
 			continue
@@ -229,7 +255,7 @@ func (s *sheet) rivals(p plane.Place, own curve, all []curve) float64 {
 		for _, r := range c.runs {
 			for _, q := range r.places {
 				d := plane.ToBox(s.at(q), p.Box)
-				cost = max(cost, 40-2*float64(d))
+				cost = max(cost, reach-3*float64(d))
 			}
 		}
 	}

@@ -106,6 +106,17 @@ func (g *Grid) size() string {
 	return fmt.Sprintf("%d rows x %d columns", len(g.rows), len(g.columns))
 }
 
+// wordy reports whether a row of words spans numeric columns: a column without
+// content then takes its width, so that the numbers stay together.
+func (g *Grid) wordy() bool {
+	for _, r := range g.rows {
+		if r.text {
+			return true
+		}
+	}
+	return false
+}
+
 // headed reports whether any column has a head.
 func (g *Grid) headed() bool {
 	for _, c := range g.columns {

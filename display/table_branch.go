@@ -19,7 +19,7 @@ func branchTable(b *continuation.Branch) *Grid {
 		g.columns = []column{{}}
 		g.add("none")
 	}
-	g.note(capital(endsOf(b)) + ".")
+	g.note(sentenceCase(endsOf(b)))
 	for _, n := range b.Notes() {
 		g.note(sentenceCase(n))
 	}
@@ -271,7 +271,7 @@ func sensitivitiesTable(s *continuation.Sensitivities) *Grid {
 		per := ratioUnit(q.Unit, one.Unit)
 		g.add(one.Name, withUnit(significant(one.Value, stateDigits), one.Unit), significant(one.Slope, vectorDigits), per, significant(one.Elasticity, vectorDigits))
 	}
-	g.note(fmt.Sprintf("Shift per unit: dλ*/dp = −(wᵀ f_p)/(wᵀ f_λ) with λ = %s; percent per percent: (p/λ*) dλ*/dp.", q.Name))
+	g.note(fmt.Sprintf("Shift per unit: dλ*/dp = -(wᵀ f_p)/(wᵀ f_λ) with λ = %s; percent per percent: (p/λ*) dλ*/dp.", q.Name))
 	return g
 }
 

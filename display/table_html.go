@@ -16,8 +16,11 @@ func (g *Grid) html() string {
 	}
 	if g.headed() {
 		out.WriteString("<thead>\n<tr>")
-		for _, c := range g.columns {
-			fmt.Fprintf(&out, `<th scope="col" style="text-align:%s">%s</th>`, alignment(c.numeric), html.EscapeString(c.head))
+		for i, c := range g.columns {
+			fmt.Fprintf(&out, `<th scope="col" style="text-align:%s%s">%s</th>`, alignment(c.numeric), g.apart(i), html.EscapeString(c.head))
+		}
+		if g.wordy() {
+			out.WriteString(`<td style="width:100%"></td>`)
 		}
 		out.WriteString("</tr>\n</thead>\n")
 	}
@@ -42,26 +45,43 @@ func alignment(numeric bool) string {
 	return "left"
 }
 
+// apart keeps a column off the one on its left.
+func (g *Grid) apart(i int) string {
+	if i == 0 {
+		return ""
+	}
+	return ";padding-left:1.2em"
+}
+
+// width is the number of columns in the html.
+func (g *Grid) width() int {
+	if g.wordy() {
+		return len(g.columns) + 1
+	}
+	return len(g.columns)
+}
+
 func (g *Grid) rowHTML(out *strings.Builder, r row) {
 	if r.heading != "" {
-		fmt.Fprintf(out, `<tr><th scope="rowgroup" colspan="%d" style="text-align:left">%s</th></tr>`+"\n", len(g.columns), html.EscapeString(r.heading))
+		fmt.Fprintf(out, `<tr><th scope="rowgroup" colspan="%d" style="text-align:left">%s</th></tr>`+"\n", g.width(), html.EscapeString(r.heading))
 		return
 	}
 	out.WriteString("<tr>")
 	for i, c := range r.cells {
-		span := ""
-		if i == len(r.cells)-1 && len(r.cells) < len(g.columns) {
-			span = fmt.Sprintf(` colspan="%d"`, len(g.columns)-i)
-		}
 		text := html.EscapeString(c)
 		switch {
 		case i == 0 && g.card:
-			fmt.Fprintf(out, `<th scope="row" style="text-align:left;font-weight:normal"%s>%s</th>`, span, text)
-		case g.columns[i].numeric && !r.text:
-			fmt.Fprintf(out, `<td style="text-align:right;font-variant-numeric:tabular-nums"%s>%s</td>`, span, text)
+			fmt.Fprintf(out, `<th scope="row" style="text-align:left;font-weight:normal;white-space:nowrap">%s</th>`, text)
+		case r.text:
+			fmt.Fprintf(out, `<td colspan="%d" style="text-align:left;padding-left:1.2em">%s</td>`, g.width()-i, text)
+		case g.columns[i].numeric:
+			fmt.Fprintf(out, `<td style="text-align:right;white-space:nowrap;font-variant-numeric:tabular-nums%s">%s</td>`, g.apart(i), text)
 		default:
-			fmt.Fprintf(out, `<td style="text-align:left"%s>%s</td>`, span, text)
+			fmt.Fprintf(out, `<td style="text-align:left%s">%s</td>`, g.apart(i), text)
 		}
+	}
+	if g.wordy() && !r.text {
+		out.WriteString("<td></td>")
 	}
 	out.WriteString("</tr>\n")
 }
@@ -82,7 +102,7 @@ func (g *Grid) footHTML(out *strings.Builder) {
 	}
 	out.WriteString("<tfoot>\n")
 	for _, line := range lines {
-		fmt.Fprintf(out, `<tr><td colspan="%d" style="text-align:left">%s</td></tr>`+"\n", len(g.columns), html.EscapeString(line))
+		fmt.Fprintf(out, `<tr><td colspan="%d" style="text-align:left">%s</td></tr>`+"\n", g.width(), html.EscapeString(line))
 	}
 	out.WriteString("</tfoot>\n")
 }

@@ -40,9 +40,7 @@ func (g *Grid) widths(rows []row) []int {
 	}
 	for _, r := range rows {
 		for i, c := range r.cells {
-			// The last cell of a row that spans several columns is not held
-			// to the width of its first.
-			if i < len(r.cells)-1 || len(r.cells) == len(g.columns) {
+			if i == 0 || !r.text { // words run over all columns
 				widths[i] = max(widths[i], utf8.RuneCountInString(c))
 			}
 		}

@@ -79,7 +79,7 @@ func Clip(line []vg.Point, in vg.Rectangle) [][]vg.Point {
 			open = false
 			continue
 		}
-		if !open {
+		if !open || a != line[i-1] {
 			pieces = append(pieces, []vg.Point{a})
 		}
 		last := len(pieces) - 1

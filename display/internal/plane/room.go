@@ -108,13 +108,16 @@ func (r *Room) Take(p Place) {
 	r.BlockLine(p.Leader)
 }
 
-// candidate puts the label on a ray from the mark, its near edge at a distance.
+// candidate puts the label in a direction from the mark: its near side, or its
+// near corner where the direction is slanting, at a distance.
 func (q Request) candidate(angle float64, d vg.Length) Place {
 	sin, cos := math.Sincos(angle)
 	u := vg.Point{X: vg.Length(cos), Y: vg.Length(sin)}
-	half := exit(q.Size, u)
-	far := q.Reach + d + half
-	c := vg.Point{X: q.Anchor.X + far*u.X, Y: q.Anchor.Y + far*u.Y}
+	side := func(v vg.Length) vg.Length { return min(max(2.2*v, -1), 1) }
+	c := vg.Point{
+		X: q.Anchor.X + (q.Reach+d)*u.X + side(u.X)*q.Size.X/2,
+		Y: q.Anchor.Y + (q.Reach+d)*u.Y + side(u.Y)*q.Size.Y/2,
+	}
 	p := Place{Box: vg.Rectangle{
 		Min: vg.Point{X: c.X - q.Size.X/2, Y: c.Y - q.Size.Y/2},
 		Max: vg.Point{X: c.X + q.Size.X/2, Y: c.Y + q.Size.Y/2},
@@ -125,12 +128,26 @@ func (q Request) candidate(angle float64, d vg.Length) Place {
 	}
 	if d > 10 {
 		p.Cost += 8
-		p.Leader = []vg.Point{
-			{X: q.Anchor.X + (q.Reach+1)*u.X, Y: q.Anchor.Y + (q.Reach+1)*u.Y},
-			{X: c.X - (half+1)*u.X, Y: c.Y - (half+1)*u.Y},
-		}
+		p.Leader = q.leader(p.Box)
 	}
 	return p
+}
+
+// leader runs from the rim of the mark to the nearest point of the label.
+func (q Request) leader(box vg.Rectangle) []vg.Point {
+	to := vg.Point{
+		X: min(max(q.Anchor.X, box.Min.X+2), box.Max.X-2),
+		Y: min(max(q.Anchor.Y, box.Min.Y+1), box.Max.Y-1),
+	}
+	if to.Y > box.Min.Y+1 && to.Y < box.Max.Y-1 { // level with the text: to its side
+		to.X = min(max(q.Anchor.X, box.Min.X-1), box.Max.X+1)
+	}
+	d := sub(to, q.Anchor)
+	u := vg.Point{X: d.X / length(d), Y: d.Y / length(d)}
+	return []vg.Point{
+		{X: q.Anchor.X + (q.Reach+1)*u.X, Y: q.Anchor.Y + (q.Reach+1)*u.Y},
+		to,
+	}
 }
 
 // leaderCrossings counts the lines that a leader crosses, and reports false when
@@ -151,19 +168,6 @@ func (r *Room) leaderCrossings(leader []vg.Point, q Request) (int, bool) {
 		}
 	}
 	return n, true
-}
-
-// exit returns how far a ray from the centre of a rectangle of that size runs in
-// it.
-func exit(size, u vg.Point) vg.Length {
-	d := vg.Length(math.Inf(1))
-	if u.X != 0 {
-		d = min(d, size.X/2/abs(u.X))
-	}
-	if u.Y != 0 {
-		d = min(d, size.Y/2/abs(u.Y))
-	}
-	return d
 }
 
 // meet reports whether two segments cross.
@@ -193,8 +197,6 @@ func grow(box vg.Rectangle, by vg.Length) vg.Rectangle {
 		Max: vg.Point{X: box.Max.X + by, Y: box.Max.Y + by},
 	}
 }
-
-func abs(v vg.Length) vg.Length { return max(v, -v) }
 
 // Corner returns the rectangle of that size in the corner of the frame on which
 // the fewest lines and labels lie, and what lies there.
