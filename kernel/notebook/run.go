@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"maps"
 	"reflect"
+	"runtime/debug"
 	"strings"
 
 	"brinkline/kernel/session"
@@ -89,10 +90,22 @@ func Run(ctx context.Context, nb *Notebook, ex Executor, progress func(Step)) er
 }
 
 func runCell(ctx context.Context, cell *Cell, number int, ex Executor, out *cellOutput) *session.Error {
-	result := ex.Run(ctx, session.Cell{ID: cell.ID(), Number: number, Source: cell.Source()}, out)
+	result := contained(ctx, ex, session.Cell{ID: cell.ID(), Number: number, Source: cell.Source()}, out)
 	out.end(result, number)
 	cell.setNumber(number)
 	return result.Err
+}
+
+// contained runs a cell. Should the executor itself break, that is the error of
+// the cell, and what exists is kept.
+func contained(ctx context.Context, ex Executor, c session.Cell, out *cellOutput) (r session.Result) {
+	defer func() {
+		if cause := recover(); cause != nil {
+			r = session.Result{Err: &session.Error{Name: "InternalError", Message: fmt.Sprintf("brinkline itself failed here: %v", cause)}}
+			r.Err.Traceback = append([]string{r.Err.Message}, strings.Split(string(debug.Stack()), "\n")...)
+		}
+	}()
+	return ex.Run(ctx, c, out)
 }
 
 // executable returns the cells that a run executes.

@@ -133,6 +133,15 @@ func TestInterruptStopsEvenWhereErrorsAreExpected(t *testing.T) {
 	expect(t, nb, "1: error(Interrupted interrupted)", "0:")
 }
 
+func TestAnExecutorThatBreaksIsAnErrorOfTheCell(t *testing.T) {
+	nb := cells(t, "a", "breaks")
+	err := Run(context.Background(), nb, script{"a": says("1"), "breaks": func(session.Output) session.Result { panic("out of ideas") }}, nil)
+	if err == nil || err.Error() != "cell 2 (id c2): brinkline itself failed here: out of ideas" {
+		t.Errorf("error %v", err)
+	}
+	expect(t, nb, "1: streamstdout(1)", "2: error(InternalError brinkline itself failed here: out of ideas)")
+}
+
 func TestInterruptBetweenCells(t *testing.T) {
 	ctx, cancel := context.WithCancel(context.Background())
 	nb := cells(t, "a", "a")
@@ -189,6 +198,62 @@ func TestFilesWithoutCellIDsGetNone(t *testing.T) {
 	}
 	if strings.Contains(string(nb.Bytes()), `"id"`) {
 		t.Errorf("an id was added:\n%s", nb.Bytes())
+	}
+}
+
+func TestWhatARunDoesNotMeanStaysAsFound(t *testing.T) {
+	const content = `{
+ "cells": [
+  {
+   "cell_type": "code",
+   "execution_count": null,
+   "id": "A-b_1",
+   "later": {
+    "z": 1.50
+   },
+   "metadata": {
+    "collapsed": true
+   },
+   "outputs": [],
+   "source": "a string, \n not a list"
+  },
+  {
+   "cell_type": "poem",
+   "source": [
+    "in two ",
+    "parts"
+   ]
+  },
+  {
+   "cell_type": "code",
+   "metadata": {
+    "tags": [
+     "skip-execution"
+    ]
+   },
+   "outputs": [
+    {
+     "output_type": "scent",
+     "rose": true
+    }
+   ],
+   "source": [
+    "x"
+   ]
+  }
+ ],
+ "house": null,
+ "nbformat": 4,
+ "nbformat_minor": 9
+}
+`
+	nb := mustParse(t, content)
+	if err := Run(context.Background(), nb, script{"a string, \n not a list": says("")}, nil); err != nil {
+		t.Fatal(err)
+	}
+	want := strings.Replace(content, `"execution_count": null`, `"execution_count": 1`, 1)
+	if diff := cmp.Diff(want, string(nb.Bytes())); diff != "" {
+		t.Error(diff)
 	}
 }
 
