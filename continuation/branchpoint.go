@@ -1,6 +1,7 @@
 package continuation
 
 import (
+	"errors"
 	"fmt"
 	"math"
 
@@ -161,6 +162,14 @@ func (t *tracer) branchPoint(c *arc, a *node, s *crossing, r refined) (*BranchPo
 	}
 	if err := t.settleSpectrum(a, 1); err != nil {
 		return nil, err
+	}
+	b.scales, b.plan = t.S, t.plan
+	if err := t.reduce(a, s, b); err != nil {
+		if errors.Is(err, ErrInterrupted) {
+			return nil, err
+		}
+		b.Reduced, b.Tangents = Reduced{}, [2][]float64{}
+		t.notes = append(t.notes, fmt.Sprintf("the branches that cross at %s are not resolved: %v", t.where(a), err))
 	}
 	t.certify(c, a, &b.found, r)
 	// Unlike a fold's, the error of the parameter is of first order in that of

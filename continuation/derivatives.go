@@ -33,6 +33,12 @@ type Differentiator interface {
 	Adjoint(x, p []float64, j int, w, a, out []float64) error
 }
 
+// A ThirdOrder Differentiator also gives third derivatives.
+type ThirdOrder interface {
+	// Third stores f_zzz[a, a, a], n components, in out.
+	Third(x, p []float64, j int, a, out []float64) error
+}
+
 // A Differentiator whose derivatives carry more than rounding says how much.
 type inexact interface {
 	// Accuracy returns the estimated relative error of the Jacobian.

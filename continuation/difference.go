@@ -55,6 +55,9 @@ var widths = []float64{0x1p-7, 0x1p-9, 0x1p-11, 0x1p-13, 0x1p-16, 0x1p-20, 0x1p-
 // The widths for second derivatives along a direction.
 var secondWidths = []float64{0x1p-6, 0x1p-8, 0x1p-10, 0x1p-12, 0x1p-15, 0x1p-19, 0x1p-24, 0x1p-30}
 
+// The widths for third derivatives along a direction.
+var thirdWidths = []float64{0x1p-3, 0x1p-4, 0x1p-5, 0x1p-6, 0x1p-7, 0x1p-8, 0x1p-10, 0x1p-12, 0x1p-15}
+
 // The widths for differences of Jacobians.
 var adjointWidths = []float64{0x1p-8, 0x1p-11, 0x1p-14, 0x1p-19, 0x1p-25, 0x1p-32}
 
@@ -322,6 +325,52 @@ func (d *difference) sizes(j, width int) []float64 {
 		w[d.n] = sp[j]
 	}
 	return w
+}
+
+// Third uses the five-point rule for the third derivative,
+//
+//	f''' ≈ (f(+2h) - f(-2h) - 2 (f(+h) - f(-h))) / 2 h³,  error h² f⁽⁵⁾ / 4,
+//
+// and Richardson's extrapolation from h and h/2, with the width on which two
+// agree best.
+func (d *difference) Third(x, p []float64, j int, a, out []float64) error {
+	length := d.unit(x, p, j, a)
+	if length == 0 {
+		clear(out)
+		return nil
+	}
+	if d.rows == nil {
+		if err := d.survey(x, p); err != nil {
+			return err
+		}
+	}
+	half := make([]float64, d.n)
+	_, _, err := agree(thirdWidths, out, d.equationWeights(1), false, func(eta float64, out []float64) error {
+		if err := d.third(x, p, j, a, eta/length, out); err != nil {
+			return err
+		}
+		if err := d.third(x, p, j, a, eta/length/2, half); err != nil {
+			return err
+		}
+		for i := range out {
+			out[i] = (4*half[i] - out[i]) / 3
+		}
+		return nil
+	})
+	return err
+}
+
+func (d *difference) third(x, p []float64, j int, a []float64, h float64, out []float64) error {
+	for i, step := range [...]float64{h, -h, 2 * h, -2 * h} {
+		d.along(x, p, j, a, step)
+		if err := d.e.Eval(d.x, d.p, d.f[i]); err != nil {
+			return err
+		}
+	}
+	for i := range out {
+		out[i] = (d.f[2][i] - d.f[3][i] - 2*(d.f[0][i]-d.f[1][i])) / (2 * h * h * h)
+	}
+	return nil
 }
 
 // Adjoint differentiates the Jacobian along a by the three-point rule; Newton's

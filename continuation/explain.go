@@ -28,7 +28,7 @@ type changes struct {
 
 func (t *tracer) changes(c *arc) changes {
 	ch := changes{
-		turn:   !c.a.isFold() && !c.b.isFold() && (c.a.t[t.n] < 0) != (c.b.t[t.n] < 0),
+		turn:   c.a.special == nil && c.b.special == nil && (c.a.t[t.n] < 0) != (c.b.t[t.n] < 0),
 		branch: c.a.det != c.b.det && c.a.det != 0 && c.b.det != 0,
 	}
 	// At a special point itself the count and the signs are those of rounding.
@@ -39,12 +39,6 @@ func (t *tracer) changes(c *arc) changes {
 		ch.count = c.b.unstable - c.a.unstable
 	}
 	return ch
-}
-
-// isFold reports whether the node is a fold: dλ/ds has no sign there.
-func (a *node) isFold() bool {
-	_, ok := a.special.(*Fold)
-	return ok
 }
 
 // accounts reports whether the change of the count is that of the event.

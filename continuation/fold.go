@@ -199,15 +199,19 @@ func (t *tracer) quadratic(a *node, w, v []float64) (float64, error) {
 }
 
 // sensitivities returns dλ*/dp_j = -(wᵀ f_{p_j}) / (wᵀ f_λ) for every parameter,
-// -1 standing for λ itself.
+// -1 standing for λ itself. It is 0 where the whole of p_j moves wᵀ f by no more
+// than the rounding of f: a heat capacity that only slows the model down.
 func (t *tracer) sensitivities(a *node, f *Fold) ([]float64, error) {
 	list, col := make([]float64, len(t.s.p)), make([]float64, t.n)
 	t.s.p[t.s.free] = a.lambda
+	noise := t.rounding(a, f.Left)
 	for j := range list {
 		if err := t.s.diff.Parameter(a.x, t.s.p, j, col); err != nil {
 			return nil, t.refuse(err)
 		}
-		list[j] = -dot(f.Left, col) / f.RangeTest
+		if slope := dot(f.Left, col); math.Abs(slope*t.s.p[j]) > noise || t.s.p[j] == 0 {
+			list[j] = -slope / f.RangeTest
+		}
 	}
 	return list, nil
 }

@@ -365,6 +365,25 @@ func (b *Branch) finish(r *run) {
 		b.ends[0] = b.ends[1]
 	}
 	b.ends[0].Point, b.ends[1].Point = b.points[0], b.points[len(b.points)-1]
+	b.countAtStart()
+}
+
+// countAtStart sets the counts around a special point that the run began at from
+// the points beside it.
+func (b *Branch) countAtStart() {
+	for _, s := range b.specials {
+		if s.Index() != b.start {
+			continue
+		}
+		before, after := s.around()
+		if b.start > 0 {
+			before = b.points[b.start-1].Unstable
+		}
+		if b.start < len(b.points)-1 {
+			after = b.points[b.start+1].Unstable
+		}
+		s.recount(before, after)
+	}
 }
 
 // point makes the point of a node, in the user's units.

@@ -4,6 +4,7 @@ import (
 	"encoding/json"
 	"math"
 	"strconv"
+	"strings"
 	"testing"
 
 	"brinkline/continuation"
@@ -191,10 +192,36 @@ func checkCoefficients(t *testing.T, c reference.Case, s continuation.Special, f
 		if s.RangeRelative > 1e-8 {
 			t.Errorf("range test %.2g relative to its size, want 0", s.RangeRelative)
 		}
+		checkReduced(t, s, f)
 	case *continuation.Hopf:
 		if !near(s.Omega, float64(f.Omega), 0, 1e-8) {
 			t.Errorf("frequency %.12g, want %.12g", s.Omega, float64(f.Omega))
 		}
+	}
+}
+
+func checkReduced(t *testing.T, b *continuation.BranchPoint, f reference.Fact) {
+	t.Helper()
+	size := math.Max(math.Abs(float64(f.Mixed)), math.Max(math.Abs(float64(f.Quadratic)), math.Abs(float64(f.ParamQuad))))
+	for _, c := range []struct {
+		name string
+		got  float64
+		want reference.Number
+	}{
+		{"quadratic", b.Quadratic, f.Quadratic}, {"mixed", b.Mixed, f.Mixed}, {"parameter quadratic", b.ParameterQuadratic, f.ParamQuad},
+	} {
+		if !near(c.got, float64(c.want), size, tolCoefficient) {
+			t.Errorf("%s coefficient %.10g, want %.10g", c.name, c.got, float64(c.want))
+		}
+	}
+	if f.Kind == "pitchfork" && !near(b.Cubic, float64(f.Cubic), 0, 1e-4) {
+		t.Errorf("cubic coefficient %.10g, want %.10g", b.Cubic, float64(f.Cubic))
+	}
+	if got := strings.Contains(b.Name(), "pitchfork"); got != (f.Kind == "pitchfork") {
+		t.Errorf("named %s, want a %s", b.Name(), f.Kind)
+	}
+	for i, want := range f.Tangents {
+		checkVector(t, "tangent", b.Tangents[i], want)
 	}
 }
 

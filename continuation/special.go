@@ -18,6 +18,7 @@ type Special interface {
 	// be relied on, and at most so many.
 	ValueText(most int) string
 	around() (before, after int)
+	recount(before, after int)
 	// on returns a copy that belongs to a point of a branch.
 	on(p *Point, index int, reversed bool) Special
 }
@@ -62,6 +63,8 @@ func (f *found) Parameter() Parameter {
 func (f *found) Model() *Model { return f.point.model }
 
 func (f *found) around() (before, after int) { return f.UnstableBefore, f.UnstableAfter }
+
+func (f *found) recount(before, after int) { f.UnstableBefore, f.UnstableAfter = before, after }
 
 // moved returns what is common, for a point of a branch that is passed in this
 // or the other direction.
@@ -145,13 +148,29 @@ type BranchPoint struct {
 	// RangeTest is wᵀ f_λ as computed, 0 up to rounding.
 	RangeTest     float64
 	RangeRelative float64
+	// Reduced is the equation of both branches; its zero value, with nil
+	// Tangents, says that it could not be computed.
+	Reduced
+	// Tangents are the unit tangents of both branches in the user's units: states,
+	// then the parameter, whose component is not negative.
+	Tangents [2][]float64
+
+	pitchfork bool
+	scales    []float64 // of the run that found the point
+	plan      *plan
 }
 
 // Kind returns "simple stationary bifurcation".
 func (b *BranchPoint) Kind() string { return "simple stationary bifurcation" }
 
 // Summary says the point in one line.
-func (b *BranchPoint) Summary() string { return b.summary(b.Kind()) }
+func (b *BranchPoint) Summary() string {
+	kind := b.Kind()
+	if name := b.Name(); name != "" {
+		kind += " (" + name + ")"
+	}
+	return b.summary(kind)
+}
 
 // String says the point in one line.
 func (b *BranchPoint) String() string { return b.Summary() }

@@ -74,7 +74,13 @@ type Fact struct {
 	NullLeft      []Number          `json:"null_left"`
 	RangeTest     json.RawMessage   `json:"range_test"`
 	Quadratic     Number            `json:"quadratic"`
+	Mixed         Number            `json:"mixed"`
+	ParamQuad     Number            `json:"parameter_quadratic"`
+	Cubic         Number            `json:"cubic"`
+	Tangents      [][]Number        `json:"tangents"`
 	Omega         Number            `json:"omega"`
+	Lyapunov      Number            `json:"lyapunov"`
+	CrossingSpeed Number            `json:"crossing_speed"`
 	Sensitivities map[string]Number `json:"sensitivities"`
 	Unstable      *int              `json:"unstable"`
 	Role          string            `json:"role"`
