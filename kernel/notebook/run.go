@@ -5,7 +5,6 @@ import (
 	"fmt"
 	"maps"
 	"reflect"
-	"runtime/debug"
 	"strings"
 
 	"brinkline/kernel/session"
@@ -102,7 +101,6 @@ func contained(ctx context.Context, ex Executor, c session.Cell, out *cellOutput
 	defer func() {
 		if cause := recover(); cause != nil {
 			r = session.Result{Err: &session.Error{Name: "InternalError", Message: fmt.Sprintf("brinkline itself failed here: %v", cause)}}
-			r.Err.Traceback = append([]string{r.Err.Message}, strings.Split(string(debug.Stack()), "\n")...)
 		}
 	}()
 	return ex.Run(ctx, c, out)
