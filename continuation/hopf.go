@@ -47,6 +47,9 @@ func (t *tracer) refineHopf(c *arc) (*node, error) {
 	if err := t.settleSpectrum(a, 2); err != nil {
 		return nil, err
 	}
+	if err := t.describeOscillation(a, h); err != nil {
+		return nil, err
+	}
 	t.certify(c, a, &h.found, refined{iterations: calls})
 	// Eigenvalues carry the error of the derivatives; over the slope of the real
 	// part that becomes an error along the branch.

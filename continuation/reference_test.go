@@ -197,6 +197,12 @@ func checkCoefficients(t *testing.T, c reference.Case, s continuation.Special, f
 		if !near(s.Omega, float64(f.Omega), 0, 1e-8) {
 			t.Errorf("frequency %.12g, want %.12g", s.Omega, float64(f.Omega))
 		}
+		if !near(s.Lyapunov, float64(f.Lyapunov), 0, 1e-5) {
+			t.Errorf("first Lyapunov coefficient %.12g, want %.12g", s.Lyapunov, float64(f.Lyapunov))
+		}
+		if !near(s.CrossingSpeed, float64(f.CrossingSpeed), 0, 1e-6) {
+			t.Errorf("crossing speed %.12g, want %.12g", s.CrossingSpeed, float64(f.CrossingSpeed))
+		}
 	}
 }
 

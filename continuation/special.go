@@ -181,6 +181,15 @@ type Hopf struct {
 	found
 	Omega  float64 // imaginary part of the pair, radians per unit of time
 	Period float64 // 2π / Omega
+	// Mode is the eigenvector q of iω: |q| = 1 in the user's units, its largest
+	// component real and positive.
+	Mode []complex128
+	// CrossingSpeed is d Re μ/dλ of the pair along the branch.
+	CrossingSpeed float64
+	// Lyapunov is the first Lyapunov coefficient for |q| = 1, <p, q> = 1: negative
+	// for a small stable oscillation, positive for a hard loss of stability; NaN
+	// where it could not be computed.
+	Lyapunov float64
 }
 
 // Kind returns "Hopf point".
