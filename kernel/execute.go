@@ -3,7 +3,9 @@ package kernel
 import (
 	"context"
 	"encoding/json"
+	"fmt"
 	"maps"
+	"runtime/debug"
 	"slices"
 	"strings"
 	"time"
@@ -61,7 +63,7 @@ func (k *kernel) execute(ctx context.Context, m *wire.Message) content {
 	if !r.Silent {
 		k.publish(m, "execute_input", content{"code": r.Code, "execution_count": number})
 	}
-	result := k.executor.Run(ctx, Cell{ID: r.cell, Number: number, Source: r.Code}, out)
+	result := k.runCell(ctx, Cell{ID: r.cell, Number: number, Source: r.Code}, out)
 	reply := content{}
 	if result.Err == nil {
 		out.result(result.Value)
@@ -81,12 +83,23 @@ func (k *kernel) execute(ctx context.Context, m *wire.Message) content {
 	return reply
 }
 
+// runCell runs a cell; a fault of the executor becomes an error of the cell.
+func (k *kernel) runCell(ctx context.Context, c Cell, out Output) (res Result) {
+	defer func() {
+		if fault := recover(); fault != nil {
+			k.log.Printf("cell %d: the kernel failed: %v\n%s", c.Number, fault, debug.Stack())
+			res.Err = &Error{Name: "InternalError", Message: fmt.Sprintf("the kernel failed: %v", fault)}
+		}
+	}()
+	return k.executor.Run(ctx, c, out)
+}
+
 // evaluate returns the values of the user expressions. Each stands for itself:
 // an error in one is told in its place.
 func (k *kernel) evaluate(ctx context.Context, r executeRequest) content {
 	values := content{}
 	for _, name := range slices.Sorted(maps.Keys(r.UserExpressions)) {
-		res := k.executor.Run(ctx, Cell{Number: k.history.count(), Source: r.UserExpressions[name]}, discard{})
+		res := k.runCell(ctx, Cell{Number: k.history.count(), Source: r.UserExpressions[name]}, discard{})
 		switch {
 		case res.Err != nil:
 			values[name] = failure(res.Err)

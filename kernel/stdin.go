@@ -17,9 +17,24 @@ type stdin struct {
 	mu      sync.Mutex
 	answers chan string // nil when no cell waits
 	from    string      // identity of the client that was asked
+	asked   [2]string   // msg_id of the input request, and of the cell's request
 }
 
-// deliver takes an input_reply. One that nobody waits for is dropped.
+// ask sends an input request and returns where the answer will come.
+func (s *stdin) ask(sockets *wire.Sockets, cell *wire.Message, c content) (<-chan string, error) {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	id, err := sockets.Ask(cell, "input_request", c)
+	if err != nil {
+		return nil, err
+	}
+	s.answers = make(chan string, 1)
+	s.from, s.asked = cell.Identity(), [2]string{id, cell.Header.ID}
+	return s.answers, nil
+}
+
+// deliver takes an input_reply. One that nobody waits for, or that says that it
+// answers something else, is dropped.
 func (s *stdin) deliver(m *wire.Message) {
 	var r struct{ Value string }
 	if m.Header.Type != "input_reply" || json.Unmarshal(m.Content, &r) != nil {
@@ -30,15 +45,11 @@ func (s *stdin) deliver(m *wire.Message) {
 	if s.answers == nil || m.Identity() != s.from {
 		return
 	}
+	if id := m.Parent.ID; id != "" && id != s.asked[0] && id != s.asked[1] {
+		return
+	}
 	s.answers <- r.Value
 	s.answers = nil
-}
-
-func (s *stdin) expect(from string) <-chan string {
-	s.mu.Lock()
-	defer s.mu.Unlock()
-	s.answers, s.from = make(chan string, 1), from
-	return s.answers
 }
 
 func (s *stdin) forget() {
@@ -55,12 +66,11 @@ func (o *output) Input(ctx context.Context, prompt string, password bool) (strin
 	o.mu.Lock()
 	o.stream.flush()
 	o.mu.Unlock()
-	answers := o.k.stdin.expect(o.parent.Identity())
-	defer o.k.stdin.forget()
-	err := o.k.sockets.Ask(o.parent, "input_request", content{"prompt": prompt, "password": password})
+	answers, err := o.k.stdin.ask(o.k.sockets, o.parent, content{"prompt": prompt, "password": password})
 	if err != nil {
 		return "", err
 	}
+	defer o.k.stdin.forget()
 	select {
 	case text := <-answers:
 		return text, nil

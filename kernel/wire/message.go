@@ -69,11 +69,13 @@ func NewID() string {
 	return fmt.Sprintf("%x-%x-%x-%x-%x", b[:4], b[4:6], b[6:8], b[8:10], b[10:])
 }
 
-// encode returns the frames of a new message, the delimiter first. A nil parent
-// gives an empty parent header, nil metadata and content an empty object.
-func (c *codec) encode(msgType string, parent *Message, metadata, content any, buffers [][]byte) ([][]byte, error) {
+// encode returns the msg_id and the frames of a new message, the delimiter first.
+// A nil parent gives an empty parent header, nil metadata and content an empty
+// object.
+func (c *codec) encode(msgType string, parent *Message, metadata, content any, buffers [][]byte) (id string, frames [][]byte, err error) {
+	id = NewID()
 	header, err := Marshal(Header{
-		ID:       NewID(),
+		ID:       id,
 		Session:  c.session,
 		Username: c.username,
 		Date:     time.Now().UTC().Format("2006-01-02T15:04:05.000000Z"),
@@ -81,7 +83,7 @@ func (c *codec) encode(msgType string, parent *Message, metadata, content any, b
 		Version:  ProtocolVersion,
 	})
 	if err != nil {
-		return nil, err
+		return "", nil, err
 	}
 	parts := [][]byte{header, []byte("{}"), []byte("{}"), []byte("{}")}
 	if parent != nil {
@@ -92,11 +94,11 @@ func (c *codec) encode(msgType string, parent *Message, metadata, content any, b
 			continue
 		}
 		if parts[2+i], err = Marshal(v); err != nil {
-			return nil, fmt.Errorf("%s: %w", msgType, err)
+			return "", nil, fmt.Errorf("%s: %w", msgType, err)
 		}
 	}
-	frames := append([][]byte{delimiter, c.signer.sign(parts)}, parts...)
-	return append(frames, buffers...), nil
+	frames = append([][]byte{delimiter, c.signer.sign(parts)}, parts...)
+	return id, append(frames, buffers...), nil
 }
 
 // decode checks the frames of a message and reads them. The identities before

@@ -71,7 +71,7 @@ func TestMarshal(t *testing.T) {
 
 func TestInvalidUTF8IsCleaned(t *testing.T) {
 	c := newCodec(signer{})
-	frames, err := c.encode("x", nil, nil, map[string]string{}, nil)
+	_, frames, err := c.encode("x", nil, nil, map[string]string{}, nil)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -85,7 +85,7 @@ func TestInvalidUTF8IsCleaned(t *testing.T) {
 // FuzzDecode feeds hostile frames; the separator splits the input into frames.
 func FuzzDecode(f *testing.F) {
 	c := newCodec(signer{})
-	good, err := c.encode("kernel_info_request", nil, nil, nil, [][]byte{{1}})
+	_, good, err := c.encode("kernel_info_request", nil, nil, nil, [][]byte{{1}})
 	if err != nil {
 		f.Fatal(err)
 	}
@@ -104,7 +104,7 @@ func FuzzDecode(f *testing.F) {
 		if m.Header.Type == "" || !json.Valid(m.RawHeader) || !json.Valid(m.Content) {
 			t.Errorf("accepted %s %s", m.RawHeader, m.Content)
 		}
-		if _, err := c.encode("reply", m, nil, nil, nil); err != nil {
+		if _, _, err := c.encode("reply", m, nil, nil, nil); err != nil {
 			t.Errorf("no reply to %s: %v", hex.EncodeToString(m.RawHeader), err)
 		}
 	})

@@ -154,7 +154,7 @@ func (s *Sockets) topic(msgType string) []byte {
 // welcome answers a subscription. Clients wait for this message to know that
 // they will miss nothing.
 func (s *Sockets) welcome(p *peer, subscription string) {
-	frames, err := s.codec.encode("iopub_welcome", nil, nil, map[string]string{"subscription": subscription}, nil)
+	_, frames, err := s.codec.encode("iopub_welcome", nil, nil, map[string]string{"subscription": subscription}, nil)
 	if err != nil {
 		s.config.Log.Print(err)
 		return
@@ -172,7 +172,7 @@ func (s *Sockets) welcome(p *peer, subscription string) {
 // Publish sends a message to all subscribers. The parent is the request that
 // caused it, or nil. It does not block.
 func (s *Sockets) Publish(parent *Message, msgType string, metadata, content any, buffers ...[]byte) error {
-	frames, err := s.codec.encode(msgType, parent, metadata, content, buffers)
+	_, frames, err := s.codec.encode(msgType, parent, metadata, content, buffers)
 	if err != nil {
 		return err
 	}
@@ -196,24 +196,26 @@ func (s *Sockets) Room(done <-chan struct{}) {
 // Reply answers a request on the channel that it came from. When its client is
 // gone the reply is lost.
 func (s *Sockets) Reply(ch Channel, request *Message, msgType string, metadata, content any) error {
-	return s.send(ch, request, msgType, metadata, content)
+	_, err := s.send(ch, request, msgType, metadata, content)
+	return err
 }
 
-// Ask sends a message on the stdin channel to the client that sent request.
-func (s *Sockets) Ask(request *Message, msgType string, content any) error {
+// Ask sends a message on the stdin channel to the client that sent request, and
+// returns its msg_id.
+func (s *Sockets) Ask(request *Message, msgType string, content any) (id string, err error) {
 	return s.send(Stdin, request, msgType, nil, content)
 }
 
-func (s *Sockets) send(ch Channel, request *Message, msgType string, metadata, content any) error {
-	frames, err := s.codec.encode(msgType, request, metadata, content, nil)
+func (s *Sockets) send(ch Channel, request *Message, msgType string, metadata, content any) (id string, err error) {
+	id, frames, err := s.codec.encode(msgType, request, metadata, content, nil)
 	if err != nil {
-		return err
+		return "", err
 	}
 	p := s.routers[ch].peer(request.identity)
 	if p == nil {
-		return fmt.Errorf("%s: the client is not connected to the %s channel", msgType, ch)
+		return "", fmt.Errorf("%s: the client is not connected to the %s channel", msgType, ch)
 	}
-	return p.offer(append(append([][]byte{}, request.route...), frames...))
+	return id, p.offer(append(append([][]byte{}, request.route...), frames...))
 }
 
 // Close lets the peers take what was sent to them, for at most the time given,

@@ -14,6 +14,7 @@ import (
 	"os"
 	"path/filepath"
 	"strings"
+	"sync"
 	"sync/atomic"
 	"testing"
 	"time"
@@ -77,6 +78,7 @@ func (m *Message) Text(key string) string {
 type Client struct {
 	T       testing.TB
 	Session string
+	Path    string             // of the connection file
 	Socket  map[string]*Socket // shell, control, stdin, iopub, hb
 	key     []byte
 }
@@ -85,6 +87,42 @@ type Client struct {
 type Socket struct {
 	*zmq4.Conn
 	Raw net.Conn
+
+	pump   sync.Once
+	next   chan received // one message ahead of what was asked for
+	close  sync.Once
+	closed chan struct{}
+}
+
+// Close ends the connection.
+func (s *Socket) Close() (err error) {
+	s.close.Do(func() {
+		close(s.closed)
+		err = s.Conn.Close()
+	})
+	return err
+}
+
+type received struct {
+	msg zmq4.Msg
+	err error
+}
+
+// start lets a goroutine read: a deadline on the connection could cut a message.
+func (s *Socket) start() {
+	go func() {
+		for {
+			msg, err := s.RecvMsg()
+			select {
+			case s.next <- received{msg, err}:
+			case <-s.closed:
+				return
+			}
+			if err != nil {
+				return
+			}
+		}
+	}()
 }
 
 var clients atomic.Int64
@@ -93,7 +131,7 @@ var clients atomic.Int64
 // its ports, and subscribes to all of IOPub.
 func Dial(t testing.TB, path string) *Client {
 	t.Helper()
-	c := &Client{T: t, Session: fmt.Sprintf("client-%d", clients.Add(1)), Socket: make(map[string]*Socket)}
+	c := &Client{T: t, Path: path, Session: fmt.Sprintf("client-%d", clients.Add(1)), Socket: make(map[string]*Socket)}
 	fields := connection(t, path)
 	c.key = []byte(fields["key"].(string))
 	for name, kind := range map[string]zmq4.SocketType{
@@ -144,7 +182,7 @@ func Open(address [2]string, kind zmq4.SocketType, identity string) (*Socket, er
 		raw.Close()
 		return nil, err
 	}
-	return &Socket{conn, raw}, nil
+	return &Socket{Conn: conn, Raw: raw, next: make(chan received, 1), closed: make(chan struct{})}, nil
 }
 
 // Subscribe asks for the messages whose topics begin with topic.
@@ -232,14 +270,16 @@ func (c *Client) Quiet(socket string, d time.Duration) {
 func (c *Client) TryReceive(socket string, d time.Duration) (*Message, error) {
 	c.T.Helper()
 	s := c.Socket[socket]
-	if err := s.Raw.SetReadDeadline(time.Now().Add(d)); err != nil {
-		return nil, err
+	s.pump.Do(s.start)
+	select {
+	case r := <-s.next:
+		if r.err != nil {
+			return nil, r.err
+		}
+		return c.parse(socket, r.msg.Frames)
+	case <-time.After(d):
+		return nil, os.ErrDeadlineExceeded
 	}
-	msg, err := s.RecvMsg()
-	if err != nil {
-		return nil, err
-	}
-	return c.parse(socket, msg.Frames)
 }
 
 // parse checks the form of a message and reads it.
