@@ -93,7 +93,7 @@ func (t *tracer) landings(c *arc) ([]*node, error) {
 func (t *tracer) stops(a *node) bool {
 	if a.special != nil {
 		_, fold := a.special.(*Fold)
-		if t.plan.stopAtAny || (t.plan.stopAtFold && fold) {
+		if t.plan.stopAtAny || (t.plan.stopAtFold && fold) || t.plan.stopsAt(a.special) {
 			t.end = &End{Reason: AtSpecial, Text: "met the " + a.special.Summary()}
 			return true
 		}
@@ -102,6 +102,20 @@ func (t *tracer) stops(a *node) bool {
 		if holds(t.point(a)) {
 			t.end = &End{Reason: Condition, Text: "met the condition at " + t.where(a)}
 			return true
+		}
+	}
+	return false
+}
+
+// stopsAt reports whether a special point is an event to stop at.
+func (p *plan) stopsAt(s Special) bool {
+	e, ok := s.(*Event)
+	if !ok {
+		return false
+	}
+	for _, w := range p.watches {
+		if w.name == e.Name {
+			return w.stop
 		}
 	}
 	return false

@@ -90,6 +90,10 @@ func (b *Branch) Specials() []Special { return b.specials }
 // Folds returns the folds in the order of the branch.
 func (b *Branch) Folds() []*Fold { return only[*Fold](b.specials) }
 
+// Events returns the points marked by events of the analyst's own, in the order of
+// the branch.
+func (b *Branch) Events() []*Event { return only[*Event](b.specials) }
+
 // BranchPoints returns the simple stationary bifurcations in the order of the
 // branch.
 func (b *Branch) BranchPoints() []*BranchPoint { return only[*BranchPoint](b.specials) }
@@ -140,7 +144,8 @@ func (b *Branch) Stretches() []Stretch {
 		from = to
 	}
 	for _, s := range b.specials {
-		if i := s.Index(); i > 0 && i < len(b.points)-1 {
+		_, event := s.(*Event) // the state goes on as it was
+		if i := s.Index(); !event && i > 0 && i < len(b.points)-1 {
 			cut(i)
 		}
 	}

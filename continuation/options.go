@@ -13,6 +13,7 @@ type plan struct {
 	low, high   float64
 	bounds      []bound
 	until       []func(*Point) bool
+	watches     []watch
 	stopAtFold  bool
 	stopAtAny   bool
 	land        []float64

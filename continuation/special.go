@@ -6,8 +6,8 @@ import (
 	"strconv"
 )
 
-// Special is a special point of a branch: a [*Fold], a [*BranchPoint] or a
-// [*Hopf]. Each was confirmed by a refinement.
+// Special is a special point of a branch: a [*Fold], a [*BranchPoint], a [*Hopf]
+// or an [*Event]. Each was confirmed by a refinement.
 type Special interface {
 	Kind() string    // "fold", "simple stationary bifurcation", "Hopf point"
 	Where() *Point   // the refined point

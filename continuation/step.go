@@ -268,27 +268,36 @@ func (t *tracer) cut(a *node, chain []*node) ([]*node, error) {
 	return out, nil
 }
 
-// segments returns the nodes from a (left out) to b, with landings between, and
-// sets t.end when a bound cuts the stretch.
+// segments returns the nodes from a (left out) to b, with events and landings
+// between, and sets t.end when a bound cuts the stretch.
 func (t *tracer) segments(a, b *node) ([]*node, error) {
-	arc := t.between(a, b)
-	if node, end, err := t.bounds(arc); err != nil || node != nil {
-		if err != nil {
-			return nil, err
-		}
-		landed, err := t.landings(t.between(a, node))
-		if err != nil {
-			return nil, err
-		}
-		t.end = end
-		if node == a {
-			return landed, nil
-		}
-		return append(landed, node), nil
-	}
-	landed, err := t.landings(arc)
+	last, end, err := t.bounds(t.between(a, b))
 	if err != nil {
 		return nil, err
 	}
-	return append(landed, b), nil
+	if last == a {
+		t.end = end
+		return nil, nil
+	}
+	if last != nil {
+		b = last
+	}
+	var out, events []*node
+	if len(t.plan.watches) > 0 {
+		if events, err = t.events(a, b); err != nil {
+			return nil, err
+		}
+	}
+	for _, next := range append(events, b) {
+		landed, err := t.landings(t.between(a, next))
+		if err != nil {
+			return nil, err
+		}
+		out = append(append(out, landed...), next)
+		a = next
+	}
+	if end != nil {
+		t.end = end
+	}
+	return out, nil
 }
