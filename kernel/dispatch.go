@@ -8,6 +8,7 @@ import (
 	"strings"
 	"time"
 
+	"brinkline/kernel/session"
 	"brinkline/kernel/wire"
 )
 
@@ -117,7 +118,7 @@ func (k *kernel) guard(h handler, ctx context.Context, m *wire.Message) (reply c
 	defer func() {
 		if fault := recover(); fault != nil {
 			k.log.Printf("%s failed: %v\n%s", m.Header.Type, fault, debug.Stack())
-			reply = failure(&Error{Name: "InternalError", Message: fmt.Sprintf("the kernel failed on %s: %v", m.Header.Type, fault)})
+			reply = failure(&session.Error{Name: "InternalError", Message: fmt.Sprintf("the kernel failed on %s: %v", m.Header.Type, fault)})
 		}
 	}()
 	return h(k, ctx, m)
@@ -179,13 +180,13 @@ func (k *kernel) idle(m *wire.Message) {
 // the request fail with an error that names them.
 func read(m *wire.Message, v any) content {
 	if err := json.Unmarshal(m.Content, v); err != nil {
-		return failure(&Error{Name: "RequestError", Message: fmt.Sprintf("%s: %v", m.Header.Type, err)})
+		return failure(&session.Error{Name: "RequestError", Message: fmt.Sprintf("%s: %v", m.Header.Type, err)})
 	}
 	return nil
 }
 
 // failure is the content of a reply that tells of an error.
-func failure(e *Error) content {
+func failure(e *session.Error) content {
 	traceback := e.Traceback
 	if traceback == nil {
 		traceback = []string{e.Name + ": " + e.Message}

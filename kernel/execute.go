@@ -10,6 +10,8 @@ import (
 	"strings"
 	"time"
 
+	"brinkline/display"
+	"brinkline/kernel/session"
 	"brinkline/kernel/wire"
 )
 
@@ -63,7 +65,7 @@ func (k *kernel) execute(ctx context.Context, m *wire.Message) content {
 	if !r.Silent {
 		k.publish(m, "execute_input", content{"code": r.Code, "execution_count": number})
 	}
-	result := k.runCell(ctx, Cell{ID: r.cell, Number: number, Source: r.Code}, out)
+	result := k.runCell(ctx, session.Cell{ID: r.cell, Number: number, Source: r.Code}, out)
 	reply := content{}
 	if result.Err == nil {
 		out.result(result.Value)
@@ -84,11 +86,11 @@ func (k *kernel) execute(ctx context.Context, m *wire.Message) content {
 }
 
 // runCell runs a cell; a fault of the executor becomes an error of the cell.
-func (k *kernel) runCell(ctx context.Context, c Cell, out Output) (res Result) {
+func (k *kernel) runCell(ctx context.Context, c session.Cell, out session.Output) (res session.Result) {
 	defer func() {
 		if fault := recover(); fault != nil {
 			k.log.Printf("cell %d: the kernel failed: %v\n%s", c.Number, fault, debug.Stack())
-			res.Err = &Error{Name: "InternalError", Message: fmt.Sprintf("the kernel failed: %v", fault)}
+			res.Err = &session.Error{Name: "InternalError", Message: fmt.Sprintf("the kernel failed: %v", fault)}
 		}
 	}()
 	return k.executor.Run(ctx, c, out)
@@ -99,12 +101,12 @@ func (k *kernel) runCell(ctx context.Context, c Cell, out Output) (res Result) {
 func (k *kernel) evaluate(ctx context.Context, r executeRequest) content {
 	values := content{}
 	for _, name := range slices.Sorted(maps.Keys(r.UserExpressions)) {
-		res := k.runCell(ctx, Cell{Number: k.history.count(), Source: r.UserExpressions[name]}, discard{})
+		res := k.runCell(ctx, session.Cell{Number: k.history.count(), Source: r.UserExpressions[name]}, discard{})
 		switch {
 		case res.Err != nil:
 			values[name] = failure(res.Err)
 		case res.Value == nil:
-			values[name] = failure(&Error{Name: "ValueError", Message: "the expression has no value"})
+			values[name] = failure(&session.Error{Name: "ValueError", Message: "the expression has no value"})
 		default:
 			values[name] = content{"status": "ok", "data": object(res.Value.Data), "metadata": object(res.Value.Metadata)}
 		}
@@ -112,7 +114,7 @@ func (k *kernel) evaluate(ctx context.Context, r executeRequest) content {
 	return values
 }
 
-func plainText(b *Bundle) string {
+func plainText(b *display.Bundle) string {
 	if b == nil {
 		return ""
 	}
@@ -123,7 +125,7 @@ func plainText(b *Bundle) string {
 // discard is an output that nobody sees.
 type discard struct{}
 
-func (discard) Stream(string, string)  {}
-func (discard) Display(Bundle, string) {}
-func (discard) Update(Bundle, string)  {}
-func (discard) Clear(bool)             {}
+func (discard) Stream(string, string)          {}
+func (discard) Display(display.Bundle, string) {}
+func (discard) Update(display.Bundle, string)  {}
+func (discard) Clear(bool)                     {}

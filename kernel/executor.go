@@ -1,33 +1,13 @@
 package kernel
 
-import "context"
+import (
+	"context"
 
-type Bundle struct {
-	Data     map[string]any
-	Metadata map[string]any
-}
-type Cell struct {
-	ID     string
-	Number int
-	Source string
-}
-type Result struct {
-	Value *Bundle
-	Err   *Error
-}
-type Error struct {
-	Name, Message string
-	Line, Column  int
-	Hint          string
-	Traceback     []string
-	Interrupted   bool
-}
-type Output interface {
-	Stream(name, text string)
-	Display(b Bundle, id string)
-	Update(b Bundle, id string)
-	Clear(wait bool)
-}
+	"brinkline/display"
+	"brinkline/kernel/session"
+)
+
+// Completion is what may stand in the place of the runes from Start to End.
 type Completion struct {
 	Matches    []string
 	Start, End int
@@ -36,9 +16,9 @@ type Completion struct {
 // Executor runs cells and knows the names in them. Run is called for one cell
 // at a time; the other methods may be called while it runs.
 type Executor interface {
-	// Run runs a cell. When ctx is cancelled it ends the cell soon, with an
-	// error that says so.
-	Run(ctx context.Context, c Cell, out Output) Result
+	// Run runs a cell. When ctx is done it ends the cell soon, with an error
+	// that says so.
+	Run(ctx context.Context, c session.Cell, out session.Output) session.Result
 
 	// Complete returns what may stand around the cursor, counted in runes.
 	Complete(source string, cursor int) Completion
@@ -48,7 +28,20 @@ type Executor interface {
 	IsComplete(source string) (status, indent string)
 
 	// Inspect describes what is at the cursor, counted in runes.
-	Inspect(source string, cursor int) (Bundle, bool)
+	Inspect(source string, cursor int) (display.Bundle, bool)
 
 	Close()
 }
+
+// newSession starts the executor of real cells.
+func newSession() (Executor, error) {
+	s, err := session.New(session.Options{})
+	return interim{s}, err
+}
+
+// interim stands in for what the session does not answer yet.
+type interim struct{ *session.Session }
+
+func (interim) Complete(string, int) Completion            { return Completion{} }
+func (interim) IsComplete(string) (string, string)         { return "unknown", "" }
+func (interim) Inspect(string, int) (display.Bundle, bool) { return display.Bundle{}, false }

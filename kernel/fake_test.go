@@ -9,6 +9,9 @@ import (
 	"strings"
 	"testing"
 	"time"
+
+	"brinkline/display"
+	"brinkline/kernel/session"
 )
 
 // When this names a connection file, the test binary is a kernel whose cells
@@ -30,84 +33,84 @@ func TestMain(m *testing.M) {
 type fake struct{}
 
 // verbs return the value of a line, if it has one.
-var verbs = map[string]func(ctx context.Context, arg string, out Output) (*Bundle, *Error){
-	"out": func(_ context.Context, arg string, out Output) (*Bundle, *Error) {
+var verbs = map[string]func(ctx context.Context, arg string, out session.Output) (*display.Bundle, *session.Error){
+	"out": func(_ context.Context, arg string, out session.Output) (*display.Bundle, *session.Error) {
 		out.Stream("stdout", arg+"\n")
 		return nil, nil
 	},
-	"err": func(_ context.Context, arg string, out Output) (*Bundle, *Error) {
+	"err": func(_ context.Context, arg string, out session.Output) (*display.Bundle, *session.Error) {
 		out.Stream("stderr", arg+"\n")
 		return nil, nil
 	},
-	"value": func(_ context.Context, arg string, _ Output) (*Bundle, *Error) {
+	"value": func(_ context.Context, arg string, _ session.Output) (*display.Bundle, *session.Error) {
 		return text(arg), nil
 	},
-	"nan": func(context.Context, string, Output) (*Bundle, *Error) {
+	"nan": func(context.Context, string, session.Output) (*display.Bundle, *session.Error) {
 		b := text("not a number")
 		b.Data["application/json"] = map[string]any{"x": math.NaN(), "y": []float64{1, math.Inf(1)}}
 		return b, nil
 	},
-	"fail": func(_ context.Context, arg string, _ Output) (*Bundle, *Error) {
-		return nil, &Error{Name: "Failure", Message: arg}
+	"fail": func(_ context.Context, arg string, _ session.Output) (*display.Bundle, *session.Error) {
+		return nil, &session.Error{Name: "Failure", Message: arg}
 	},
-	"panic": func(_ context.Context, arg string, _ Output) (*Bundle, *Error) { panic(arg) },
-	"loop": func(ctx context.Context, _ string, out Output) (*Bundle, *Error) {
+	"panic": func(_ context.Context, arg string, _ session.Output) (*display.Bundle, *session.Error) { panic(arg) },
+	"loop": func(ctx context.Context, _ string, out session.Output) (*display.Bundle, *session.Error) {
 		<-ctx.Done()
-		return nil, &Error{Name: "Interrupted", Message: "interrupted", Interrupted: true}
+		return nil, &session.Error{Name: "Interrupted", Message: "interrupted", Interrupted: true}
 	},
-	"deaf": func(context.Context, string, Output) (*Bundle, *Error) { select {} },
-	"sleep": func(ctx context.Context, arg string, _ Output) (*Bundle, *Error) {
+	"deaf": func(context.Context, string, session.Output) (*display.Bundle, *session.Error) { select {} },
+	"sleep": func(ctx context.Context, arg string, _ session.Output) (*display.Bundle, *session.Error) {
 		d, _ := time.ParseDuration(arg)
 		time.Sleep(d)
 		return nil, nil
 	},
-	"display": func(_ context.Context, arg string, out Output) (*Bundle, *Error) {
+	"display": func(_ context.Context, arg string, out session.Output) (*display.Bundle, *session.Error) {
 		id, t, _ := strings.Cut(arg, " ")
 		out.Display(*text(t), id)
 		return nil, nil
 	},
-	"update": func(_ context.Context, arg string, out Output) (*Bundle, *Error) {
+	"update": func(_ context.Context, arg string, out session.Output) (*display.Bundle, *session.Error) {
 		id, t, _ := strings.Cut(arg, " ")
 		out.Update(*text(t), id)
 		return nil, nil
 	},
-	"clear": func(_ context.Context, arg string, out Output) (*Bundle, *Error) {
+	"clear": func(_ context.Context, arg string, out session.Output) (*display.Bundle, *session.Error) {
 		out.Clear(arg == "wait")
 		return nil, nil
 	},
-	"flood": func(ctx context.Context, arg string, out Output) (*Bundle, *Error) {
+	"flood": func(ctx context.Context, arg string, out session.Output) (*display.Bundle, *session.Error) {
 		n, _ := strconv.Atoi(arg)
 		for i := range n {
 			out.Stream("stdout", fmt.Sprintf("line %d\n", i))
 		}
 		return nil, nil
 	},
-	"displays": func(ctx context.Context, arg string, out Output) (*Bundle, *Error) {
+	"displays": func(ctx context.Context, arg string, out session.Output) (*display.Bundle, *session.Error) {
 		n, _ := strconv.Atoi(arg)
 		for i := 0; i < n && ctx.Err() == nil; i++ {
 			out.Display(*text(strings.Repeat("x", 1000)), "")
 		}
 		return nil, nil
 	},
-	"late": func(_ context.Context, arg string, out Output) (*Bundle, *Error) {
+	"late": func(_ context.Context, arg string, out session.Output) (*display.Bundle, *session.Error) {
 		time.AfterFunc(200*time.Millisecond, func() { out.Stream("stdout", arg) })
 		return nil, nil
 	},
-	"input": func(ctx context.Context, arg string, out Output) (*Bundle, *Error) {
+	"input": func(ctx context.Context, arg string, out session.Output) (*display.Bundle, *session.Error) {
 		line, err := out.(interface {
 			Input(context.Context, string, bool) (string, error)
 		}).Input(ctx, arg, false)
 		if err != nil {
-			return nil, &Error{Name: "InputError", Message: err.Error(), Interrupted: ctx.Err() != nil}
+			return nil, &session.Error{Name: "InputError", Message: err.Error(), Interrupted: ctx.Err() != nil}
 		}
 		return text("read " + line), nil
 	},
-	"cell": func(context.Context, string, Output) (*Bundle, *Error) { return nil, nil }, // see Run
+	"cell": func(context.Context, string, session.Output) (*display.Bundle, *session.Error) { return nil, nil }, // see Run
 }
 
-func text(s string) *Bundle { return &Bundle{Data: map[string]any{"text/plain": s}} }
+func text(s string) *display.Bundle { return &display.Bundle{Data: map[string]any{"text/plain": s}} }
 
-func (*fake) Run(ctx context.Context, c Cell, out Output) (res Result) {
+func (*fake) Run(ctx context.Context, c session.Cell, out session.Output) (res session.Result) {
 	for _, line := range strings.Split(c.Source, "\n") {
 		verb, arg, _ := strings.Cut(line, " ")
 		switch f := verbs[verb]; {
@@ -115,7 +118,7 @@ func (*fake) Run(ctx context.Context, c Cell, out Output) (res Result) {
 		case verb == "cell":
 			res.Value = text(fmt.Sprintf("cell %q number %d", c.ID, c.Number))
 		case f == nil:
-			return Result{Err: &Error{Name: "SyntaxError", Message: "no verb " + verb}}
+			return session.Result{Err: &session.Error{Name: "SyntaxError", Message: "no verb " + verb}}
 		default:
 			if res.Value, res.Err = f(ctx, arg, out); res.Err != nil {
 				return res
@@ -150,9 +153,9 @@ func (*fake) IsComplete(source string) (status, indent string) {
 	return "complete", ""
 }
 
-func (*fake) Inspect(source string, cursor int) (Bundle, bool) {
+func (*fake) Inspect(source string, cursor int) (display.Bundle, bool) {
 	if verbs[strings.TrimSpace(source)] == nil {
-		return Bundle{}, false
+		return display.Bundle{}, false
 	}
 	return *text(fmt.Sprintf("verb %s, cursor at %d", source, cursor)), true
 }

@@ -4,6 +4,7 @@ import (
 	"context"
 	"sync"
 
+	"brinkline/display"
 	"brinkline/kernel/wire"
 )
 
@@ -42,12 +43,12 @@ func (o *output) Stream(name, text string) {
 }
 
 // Display publishes a bundle; later updates find it by its id.
-func (o *output) Display(b Bundle, id string) { o.bundle("display_data", b, id) }
+func (o *output) Display(b display.Bundle, id string) { o.bundle("display_data", b, id) }
 
 // Update changes all that was displayed under id.
-func (o *output) Update(b Bundle, id string) { o.bundle("update_display_data", b, id) }
+func (o *output) Update(b display.Bundle, id string) { o.bundle("update_display_data", b, id) }
 
-func (o *output) bundle(msgType string, b Bundle, id string) {
+func (o *output) bundle(msgType string, b display.Bundle, id string) {
 	transient := content{}
 	if id != "" {
 		transient["display_id"] = id
@@ -74,7 +75,7 @@ func (o *output) publish(msgType string, c content) {
 func (o *output) room() { o.k.sockets.Room(o.ctx.Done()) }
 
 // result closes the output with the value of the cell.
-func (o *output) result(b *Bundle) {
+func (o *output) result(b *display.Bundle) {
 	o.end()
 	if b == nil || o.silent {
 		return

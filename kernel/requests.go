@@ -6,6 +6,7 @@ import (
 	"strings"
 	"unicode/utf8"
 
+	"brinkline/display"
 	"brinkline/kernel/wire"
 )
 
@@ -107,7 +108,7 @@ func (k *kernel) inspect(_ context.Context, m *wire.Message) content {
 	}
 	b, found := k.executor.Inspect(r.Code, r.cursor())
 	if !found {
-		b = Bundle{}
+		b = display.Bundle{}
 	}
 	return content{"status": "ok", "found": found, "data": object(b.Data), "metadata": object(b.Metadata)}
 }

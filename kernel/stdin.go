@@ -5,6 +5,7 @@ import (
 	"encoding/json"
 	"errors"
 	"sync"
+	"time"
 
 	"brinkline/kernel/wire"
 )
@@ -66,7 +67,12 @@ func (o *output) Input(ctx context.Context, prompt string, password bool) (strin
 	o.mu.Lock()
 	o.stream.flush()
 	o.mu.Unlock()
-	answers, err := o.k.stdin.ask(o.k.sockets, o.parent, content{"prompt": prompt, "password": password})
+	request := content{"prompt": prompt, "password": password}
+	answers, err := o.k.stdin.ask(o.k.sockets, o.parent, request)
+	for patience := 100; err != nil && patience > 0 && ctx.Err() == nil; patience-- {
+		time.Sleep(10 * time.Millisecond) // the client's stdin channel may not be up yet
+		answers, err = o.k.stdin.ask(o.k.sockets, o.parent, request)
+	}
 	if err != nil {
 		return "", err
 	}
