@@ -8,17 +8,27 @@ import (
 	"brinkline/continuation"
 )
 
-// build lays the figure out.
+// build makes the picture of the figure.
 func (f *Figure) build() (*picture, error) {
 	s, err := f.scene()
 	if err != nil {
 		return nil, err
 	}
+	notes := f.notes()
+	p, err := f.lay(s, f.wrapNotes(notes))
+	if err != nil {
+		return nil, err
+	}
+	p.title, p.description = f.heading(s), f.sentence(s)
+	p.text = strings.TrimSpace(p.description + "\n" + strings.Join(notes, "\n"))
+	return p, nil
+}
+
+// lay puts a scene on axes that fit, over the lines under the plot.
+func (f *Figure) lay(s *scene, notes []string) (*picture, error) {
 	p := newPlot()
 	p.Title.Text = spell(f.title)
-	notes := f.notes(s)
-	lines := f.wrapNotes(notes)
-	height := f.height - vg.Length(len(lines))*notePitch
+	height := f.height - vg.Length(len(notes))*notePitch
 	xs, ys := s.values()
 	if err := s.x.fit(&p.X, xs, f.width-60, false); err != nil {
 		return nil, err
@@ -27,15 +37,8 @@ func (f *Figure) build() (*picture, error) {
 	if err := s.y.fit(&p.Y, ys, height-45, true); err != nil {
 		return nil, err
 	}
-	d := &drawing{scene: s}
-	p.Add(d)
-	sentence := f.sentence(s)
-	pic := &picture{
-		plot: p, width: f.width, height: f.height, notes: lines,
-		title: f.heading(s), description: sentence,
-		text: strings.TrimSpace(sentence + "\n" + strings.Join(notes, "\n")),
-	}
-	return pic, nil
+	p.Add(&drawing{scene: s})
+	return &picture{plot: p, width: f.width, height: f.height, notes: notes}, nil
 }
 
 // heading is the title for those who do not see the picture.
@@ -48,7 +51,7 @@ func (f *Figure) heading(s *scene) string {
 
 // notes are the lines under a branch that is shown as it is: why it ends, and
 // what the run could not explain.
-func (f *Figure) notes(s *scene) []string {
+func (f *Figure) notes() []string {
 	if !f.captioned {
 		return nil
 	}

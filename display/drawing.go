@@ -11,10 +11,7 @@ import (
 )
 
 // A drawing puts a scene on the data area of a plot.
-type drawing struct {
-	scene *scene
-	left  int // labels that found no room, known when drawn
-}
+type drawing struct{ scene *scene }
 
 // A sheet is a drawing on one canvas.
 type sheet struct {
@@ -36,7 +33,7 @@ func (d *drawing) Plot(c draw.Canvas, p *plot.Plot) {
 	}
 	spots := s.marks(d.scene.marks)
 	s.spans(d.scene.spans)
-	d.left = s.markLabels(spots) + s.curveLabels(d.scene.curves)
+	s.curveLabels(d.scene.curves, s.markLabels(spots))
 }
 
 // at returns where a place lies on the canvas.

@@ -157,36 +157,48 @@ func (sp spot) request() plane.Request {
 }
 
 // curveLabels names the branches beside their lines or, when there is no room, in
-// a legend in the emptiest corner. It returns how many names are not in the
-// figure.
-func (s *sheet) curveLabels(curves []curve) (left int) {
-	var list []placed
+// a legend in the emptiest corner. left is how many labels of marks found no room:
+// the figure says so.
+func (s *sheet) curveLabels(curves []curve, left int) {
+	places, ok := s.besideAll(curves)
+	if !ok {
+		left += s.legend(curves)
+	}
+	for i, p := range places {
+		s.room.Take(p)
+		if p.Leader != nil {
+			s.StrokeLines(draw.LineStyle{Color: curves[i].ink, Width: 0.5}, p.Leader)
+		}
+		if curves[i].label != "" {
+			s.write(spell(curves[i].label), p.Box, labelSize, darker(curves[i].ink))
+		}
+	}
+	if left > 0 {
+		text := count(left, "label", "labels") + " without room: see the text or the table"
+		if box, ok := s.room.Spot(textSize(text, noteSize)); ok {
+			s.SetColor(plate)
+			s.Fill(box.Path())
+			s.write(text, box, noteSize, faint)
+		}
+	}
+}
+
+// besideAll finds places for the names of all curves, or none.
+func (s *sheet) besideAll(curves []curve) ([]plane.Place, bool) {
+	places := make([]plane.Place, len(curves))
 	room := s.room.Copy()
-	for _, c := range curves {
+	for i, c := range curves {
 		if c.label == "" {
 			continue
 		}
 		p, ok := s.beside(room, c, curves)
 		if !ok {
-			return s.legend(curves)
+			return nil, false
 		}
 		room.Take(p)
-		list = append(list, placed{text: spell(c.label), place: p})
+		places[i] = p
 	}
-	i := 0
-	for _, c := range curves {
-		if c.label == "" {
-			continue
-		}
-		l := list[i]
-		i++
-		s.room.Take(l.place)
-		if l.place.Leader != nil {
-			s.StrokeLines(draw.LineStyle{Color: c.ink, Width: 0.5}, l.place.Leader)
-		}
-		s.write(l.text, l.place.Box, labelSize, darker(c.ink))
-	}
-	return 0
+	return places, true
 }
 
 // beside finds the best place for the name of a curve along its line, nearer to
@@ -262,7 +274,8 @@ func (s *sheet) rivals(p plane.Place, own curve, all []curve) float64 {
 	return cost
 }
 
-// legend lists the branches in the emptiest corner.
+// legend lists the branches in the emptiest corner, and returns how many names
+// found no room.
 func (s *sheet) legend(curves []curve) (left int) {
 	const swatch, gap, pitch = 22, 5, 12
 	width, rows := vg.Length(0), 0
@@ -272,7 +285,10 @@ func (s *sheet) legend(curves []curve) (left int) {
 			rows++
 		}
 	}
-	box, _ := s.room.Corner(vg.Point{X: swatch + gap + width + 2, Y: pitch*vg.Length(rows) + 2})
+	box, ok := s.room.Spot(vg.Point{X: swatch + gap + width + 2, Y: pitch*vg.Length(rows) + 2})
+	if !ok {
+		return rows
+	}
 	s.SetColor(plate)
 	s.Fill(box.Path())
 	y := box.Max.Y - 1
@@ -285,5 +301,6 @@ func (s *sheet) legend(curves []curve) (left int) {
 		at := vg.Rectangle{Min: vg.Point{X: box.Min.X + swatch + gap, Y: y + 1.5}}
 		s.write(spell(c.label), at, labelSize, ink)
 	}
+	s.room.Block(box)
 	return 0
 }

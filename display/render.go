@@ -52,11 +52,11 @@ func renderOwn(v any) (Bundle, bool) {
 	case *Grid:
 		return v.bundle(), true
 	case *continuation.Branch:
-		return branchFigure(v).bundle(), true
+		return branchBundle(v), true
 	case continuation.Progress:
 		return progressBundle(v), true
 	case brancher:
-		return branchFigure(v.Branch()).bundle(), true
+		return branchBundle(v.Branch()), true
 	}
 	if g := card(v); g != nil {
 		return g.bundle(), true
@@ -116,6 +116,15 @@ func branchFigure(b *continuation.Branch) *Figure {
 	f := Plot(b)
 	f.captioned = true
 	return f
+}
+
+// branchBundle says a branch in words when it cannot be drawn.
+func branchBundle(b *continuation.Branch) Bundle {
+	f := branchFigure(b)
+	if err := f.Err(); err != nil {
+		return plainBundle(b.String() + " (no picture: " + err.Error() + ")")
+	}
+	return f.bundle()
 }
 
 // userPicture shows a plot that the analyst made with gonum in its own style.

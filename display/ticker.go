@@ -54,7 +54,7 @@ func (t ticker) tidy(marks []plot.Tick, low, span float64) []plot.Tick {
 	if t.vertical || len(marks) < 3 {
 		return marks
 	}
-	if f := face(labelSize); vg.Length((marks[0].Value-low)/span)*t.length+4 < f.Width(marks[0].Label)/2-6 {
+	if f := face(labelSize); vg.Length((marks[0].Value-low)/span)*t.length+4 < f.Width(marks[0].Label)/2-13 {
 		marks[0].Label = ""
 	}
 	return marks
@@ -105,21 +105,18 @@ func (d decimal) marks(low, high float64) []plot.Tick {
 }
 
 // tickLabels writes all values in the shorter of two forms: plain, or with the
-// exponent of the greatest. exponent is that of the last digit that matters.
-func tickLabels(values []float64, exponent int) []string {
+// exponent of the greatest. last is the exponent of the last digit that matters.
+func tickLabels(values []float64, last int) []string {
 	greatest := 0.0
 	for _, v := range values {
 		greatest = max(greatest, math.Abs(v))
 	}
+	top := last + len(whole(greatest, last)) - 1
 	plain := make([]string, len(values))
 	short := make([]string, len(values))
-	top := 0
-	if greatest > 0 {
-		top = exponentOf(greatest, 15)
-	}
 	for i, v := range values {
-		plain[i] = strconv.FormatFloat(v, 'f', max(0, -exponent), 64)
-		short[i] = scientific(v, top, exponent)
+		plain[i] = strconv.FormatFloat(v, 'f', max(0, -last), 64)
+		short[i] = scientific(v, top, last)
 	}
 	chosen := plain
 	if longest(plain) > 6 && longest(short) < longest(plain) {
@@ -131,20 +128,21 @@ func tickLabels(values []float64, exponent int) []string {
 	return chosen
 }
 
+// whole writes v as a whole number of 10^last.
+func whole(v float64, last int) string {
+	text := strconv.FormatFloat(v, 'e', 16, 64)
+	mantissa, exponent, _ := strings.Cut(text, "e")
+	e, _ := strconv.Atoi(exponent)
+	n, _ := strconv.ParseFloat(mantissa+"e"+strconv.Itoa(e-last), 64)
+	return strconv.FormatFloat(n, 'f', 0, 64)
+}
+
 // scientific writes v as a multiple of 10^top down to the digit of 10^last.
 func scientific(v float64, top, last int) string {
 	if v == 0 {
 		return "0"
 	}
-	text := strconv.FormatFloat(v, 'e', 17, 64)
-	if exponentOf(v, 15) != top {
-		text = "" // a mantissa below 1
-	}
-	mantissa, _, _ := strings.Cut(text, "e")
-	m, err := strconv.ParseFloat(mantissa, 64)
-	if err != nil {
-		m = v / math.Pow10(top)
-	}
+	m, _ := strconv.ParseFloat(whole(v, last)+"e"+strconv.Itoa(last-top), 64)
 	return strconv.FormatFloat(m, 'f', max(0, top-last), 64) + "e" + strconv.Itoa(top)
 }
 

@@ -180,13 +180,26 @@ func TestNearPrefersTheWantedSide(t *testing.T) {
 	}
 }
 
-func TestCornerIsTheEmptiest(t *testing.T) {
+func TestSpotIsTheEmptiest(t *testing.T) {
 	room := &Room{Frame: vg.Rectangle{Max: vg.Point{X: 400, Y: 250}}}
+	size := vg.Point{X: 80, Y: 40}
 	room.BlockLine([]vg.Point{{X: 300, Y: 240}, {X: 400, Y: 240}}) // top right
 	room.BlockLine([]vg.Point{{X: 0, Y: 240}, {X: 100, Y: 240}})   // top left
 	room.Block(vg.Rectangle{Max: vg.Point{X: 50, Y: 50}})          // bottom left
-	box, n := room.Corner(vg.Point{X: 80, Y: 40})
-	if n != 0 || box.Max.X < 390 || box.Min.Y > 10 {
-		t.Errorf("%v with %d", box, n)
+	box, ok := room.Spot(size)
+	if !ok || box.Max.X < 390 || box.Min.Y > 10 {
+		t.Errorf("%v, %v", box, ok)
+	}
+	for _, x := range []vg.Length{0, 350} {
+		for _, y := range []vg.Length{0, 200} {
+			room.Block(vg.Rectangle{Min: vg.Point{X: x, Y: y}, Max: vg.Point{X: x + 50, Y: y + 50}})
+		}
+	}
+	if box, ok = room.Spot(size); !ok || room.taken(box) || room.crossings(box) > 0 {
+		t.Errorf("with labels in all corners: %v, %v", box, ok)
+	}
+	room.Block(room.Frame)
+	if _, ok = room.Spot(size); ok {
+		t.Error("a place was found where there is none")
 	}
 }

@@ -198,25 +198,36 @@ func grow(box vg.Rectangle, by vg.Length) vg.Rectangle {
 	}
 }
 
-// Corner returns the rectangle of that size in the corner of the frame on which
-// the fewest lines and labels lie, and what lies there.
-func (r *Room) Corner(size vg.Point) (vg.Rectangle, int) {
+// Spot returns a rectangle of that size on which no label lies and as few lines as
+// can be: the emptiest corner, or where no corner is free of labels the emptiest
+// other place. It reports false where labels are everywhere.
+func (r *Room) Spot(size vg.Point) (vg.Rectangle, bool) {
 	best, least := vg.Rectangle{}, math.MaxInt
-	for _, right := range []bool{true, false} {
-		for _, top := range []bool{true, false} {
-			box := r.corner(size, right, top)
-			n := r.crossings(box)
-			for _, b := range r.boxes {
-				if Overlap(b, box) {
-					n += 100
-				}
-			}
-			if n < least {
-				best, least = box, n
-			}
+	try := func(box vg.Rectangle) {
+		if !inside(box, r.Frame) || r.taken(grow(box, margin)) {
+			return
+		}
+		if n := r.crossings(box); n < least {
+			best, least = box, n
 		}
 	}
-	return best, least
+	for _, right := range []bool{true, false} {
+		for _, top := range []bool{true, false} {
+			try(r.corner(size, right, top))
+		}
+	}
+	if least < math.MaxInt {
+		return best, true
+	}
+	const steps = 24
+	free := vg.Point{X: r.Frame.Max.X - r.Frame.Min.X - size.X, Y: r.Frame.Max.Y - r.Frame.Min.Y - size.Y}
+	for i := range steps + 1 {
+		for j := range steps + 1 {
+			at := vg.Point{X: r.Frame.Min.X + free.X*vg.Length(j)/steps, Y: r.Frame.Min.Y + free.Y*vg.Length(i)/steps}
+			try(vg.Rectangle{Min: at, Max: vg.Point{X: at.X + size.X, Y: at.Y + size.Y}})
+		}
+	}
+	return best, least < math.MaxInt
 }
 
 func (r *Room) corner(size vg.Point, right, top bool) vg.Rectangle {
