@@ -33,7 +33,7 @@ func (t *tracer) refineBranchPoint(c *arc) (*node, error) {
 	if err != nil {
 		return nil, err
 	}
-	if math.Abs(sys.beta) > 1e-8 {
+	if math.Abs(sys.beta) > crossingGap {
 		return nil, &refusal{reason: fmt.Sprintf("the branches near %s pass each other without crossing", t.where(a))}
 	}
 	if err := t.within(c, a); err != nil {
@@ -50,6 +50,10 @@ func (t *tracer) refineBranchPoint(c *arc) (*node, error) {
 	a.special = point
 	return a, nil
 }
+
+// crossingGap is the largest |β|, relative to the terms of the equations, at which
+// two branches are taken to cross and not to pass each other.
+const crossingGap = 1e-12
 
 // A crossing is the augmented system of two branches that cross.
 type crossing struct {

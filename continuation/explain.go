@@ -67,6 +67,14 @@ func (t *tracer) resolve(c *arc, depth int) ([]*node, error) {
 	if found != nil {
 		return []*node{found}, nil
 	}
+	if found == nil && c.length < multipleArc && (ch.count > 1 || ch.count < -1) {
+		if found, err = t.refineMultiple(c); found != nil {
+			return []*node{found}, nil
+		}
+		if errors.Is(err, ErrInterrupted) {
+			return nil, err
+		}
+	}
 	if c.length < shortestArc || depth > deepest {
 		return nil, t.unexplained(c, ch, err)
 	}

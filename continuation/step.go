@@ -55,11 +55,31 @@ func (t *tracer) attempt(a *node, ds float64) ([]*node, error) {
 		t.end = &End{Reason: Closed}
 	}
 	chain, err := t.explain(arc)
+	if err == nil && len(chain) == 0 {
+		chain, err = t.cancelled(a, b)
+	}
 	if err != nil {
 		t.end = nil
 		return nil, err
 	}
 	return t.cut(a, append(chain, b))
+}
+
+// cancelled returns the special points on the new arc that cancel each other, and
+// puts those on the last one in their places.
+func (t *tracer) cancelled(a, b *node) ([]*node, error) {
+	last := len(t.nodes) - 1
+	if last < 1 {
+		return nil, nil
+	}
+	before, after, err := t.hidden(t.nodes[last-1], a, b)
+	if err != nil {
+		return nil, err
+	}
+	if len(before) > 0 {
+		t.nodes = append(t.nodes[:last], append(before, a)...)
+	}
+	return after, nil
 }
 
 // reach predicts and corrects.
