@@ -156,8 +156,8 @@ func (b *Branch) Stretches() []Stretch {
 // unstableWithin returns the count on the stretch between two points, which may
 // be special points themselves.
 func (b *Branch) unstableWithin(from, to int) int {
-	for i := from + 1; i < to; i++ {
-		return b.points[i].Unstable
+	if from+1 < to {
+		return b.points[from+1].Unstable
 	}
 	for _, s := range b.specials {
 		before, after := s.around()

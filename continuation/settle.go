@@ -235,7 +235,7 @@ func (n *newton) damped(step, trial []float64, size, damping float64) (float64, 
 		}
 	}
 	if outside != nil {
-		return 0, fmt.Errorf("Newton's method is led out of the model's domain: %w; try a guess nearer to a steady state", outside)
+		return 0, fmt.Errorf("the iteration is led out of the model's domain: %w; try a guess nearer to a steady state", outside)
 	}
 	return 0, n.failed("after %d steps no shorter step helps", n.steps)
 }
