@@ -2,6 +2,7 @@ package display
 
 import (
 	"math"
+	"slices"
 
 	"gonum.org/v1/plot"
 	"gonum.org/v1/plot/vg"
@@ -106,7 +107,9 @@ type spot struct {
 // marks draws special points and steady states that lie in the frame.
 func (s *sheet) marks(list []mark) []spot {
 	var spots []spot
-	for _, m := range list {
+	order := slices.Clone(list) // the dots of a list of points go under all others
+	slices.SortStableFunc(order, func(a, b mark) int { return rank(a) - rank(b) })
+	for _, m := range order {
 		sp := spot{mark: m, centre: s.at(m.place), reach: 4}
 		if !s.Contains(sp.centre) {
 			continue
@@ -125,6 +128,13 @@ func (s *sheet) marks(list []mark) []spot {
 		spots = append(spots, sp)
 	}
 	return spots
+}
+
+func rank(m mark) int {
+	if m.kind == "" && m.label == "" {
+		return 0
+	}
+	return 1
 }
 
 // unit returns the direction of v, upright when v is unknown.
@@ -205,9 +215,12 @@ func (s *sheet) ring(sp *spot, u vg.Point) {
 	sp.prefer, sp.reach = n, 5
 }
 
-// dot draws a steady state.
+// dot draws a steady state, smaller when it is one of a list.
 func (s *sheet) dot(sp *spot) {
-	const radius = 2.6
+	radius := vg.Length(2.6)
+	if sp.label == "" {
+		radius = 1.6
+	}
 	s.SetColor(ink)
 	var path vg.Path
 	path.Move(vg.Point{X: sp.centre.X + radius, Y: sp.centre.Y})

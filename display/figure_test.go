@@ -143,11 +143,14 @@ func TestLines(t *testing.T) {
 		}
 		return true
 	}
-	if got := kinds(tankBranch(t)); !same(got, solid, dashed, dashed, solid) {
+	if got := kinds(tankBranch(t)); !same(got, solid, dashed, solid) {
 		t.Errorf("tank: %v", got)
 	}
 	if got := kinds(feederBranch(t)); !same(got, solid, dashed) {
 		t.Errorf("feeder: %v", got)
+	}
+	if got := kinds(isola(t)); !same(got, solid, dashed) {
+		t.Errorf("isola, closed in the middle of its stable half: %v", got)
 	}
 	m := newModel(t, tank, tankParams{Inflow: 100, Coolant: 300, Feed: 350})
 	quick := follow(t, settle(t, m, tankState{0.1, 320}), "Coolant", continuation.Within(280, 320), continuation.WithoutEigenvalues())

@@ -51,7 +51,9 @@ func gallery(t testing.TB) map[string]*Figure {
 		return 3 * (p.State[1] - p.Parameters[1])
 	}).Size(8.5, 6)
 	figures["plane"] = Plot(path, path.Folds()).X("Conversion").Y("Temperature")
-	if fold, err := path.LimitAbove(path.Points()[path.Start()]); err == nil {
+	figures["isola"] = branchFigure(isola(t))
+	figures["points"] = Plot(path.Points(), path.Folds())
+	if fold, err := path.LimitAbove(start); err == nil {
 		m, err := start.MarginTo(fold)
 		if err != nil {
 			t.Fatal(err)
@@ -95,4 +97,13 @@ func closeFolds(t testing.TB) *continuation.Branch {
 	}
 	m := newModel(t, f, oneParams{Push: 0.5}, continuation.Named("pinch"))
 	return follow(t, settle(t, m, oneState{-0.8}), "Push", continuation.Within(0.5, 1.5))
+}
+
+// isola is a closed branch: an ellipse.
+func isola(t testing.TB) *continuation.Branch {
+	f := func(s oneState, q oneParams) oneState {
+		return oneState{1 - s.X*s.X - q.Push*q.Push/9}
+	}
+	m := newModel(t, f, oneParams{Push: 0}, continuation.Named("isola"))
+	return follow(t, settle(t, m, oneState{0.8}), "Push", continuation.Within(-5, 5))
 }

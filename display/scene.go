@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"image/color"
 	"math"
+	"slices"
 
 	"brinkline/continuation"
 )
@@ -153,7 +154,31 @@ func (s *scene) runs(b *continuation.Branch, reference int) ([]run, error) {
 			runs = append(runs, run{part, line})
 		}
 	}
-	return runs, nil
+	return joined(runs), nil
+}
+
+// joined makes one run of runs that follow each other with the same kind of line,
+// also over the seam of a closed curve: dashes go on and no gap is seen.
+func joined(runs []run) []run {
+	var out []run
+	for _, r := range runs {
+		if n := len(out); n > 0 && meets(out[n-1], r) {
+			out[n-1].places = append(slices.Clip(out[n-1].places), r.places[1:]...)
+			continue
+		}
+		out = append(out, r)
+	}
+	if n := len(out); n > 1 && meets(out[n-1], out[0]) {
+		out[0].places = append(slices.Clip(out[n-1].places), out[0].places[1:]...)
+		out = out[:n-1]
+	}
+	return out
+}
+
+// meets reports whether b goes on where a ends, with the same kind of line.
+func meets(a, b run) bool {
+	end, begin := a.places[len(a.places)-1], b.places[0]
+	return a.line == b.line && end.x == begin.x && end.y == begin.y
 }
 
 func finiteParts(places []place) [][]place {

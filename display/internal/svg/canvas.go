@@ -139,6 +139,9 @@ func (c *Canvas) FillString(face font.Face, at vg.Point, text string) {
 	fmt.Fprintf(&c.body, ` font-size="%s" textLength="%s" lengthAdjust="spacingAndGlyphs" fill="%s"`,
 		number(face.Font.Size*scale), number(face.Width(text)*scale), rgb(c.pen.color))
 	c.opacity("fill-opacity")
+	if family, ok := families[face.Font.Variant]; ok {
+		fmt.Fprintf(&c.body, ` font-family="%s"`, family)
+	}
 	if face.Font.Weight > 0 {
 		c.body.WriteString(` font-weight="bold"`)
 	}
@@ -156,6 +159,12 @@ func (c *Canvas) DrawImage(rect vg.Rectangle, img image.Image) {
 	x1, y1 := m.apply(rect.Max.X.Points(), rect.Min.Y.Points())
 	fmt.Fprintf(&c.body, `<image x="%s" y="%s" width="%s" height="%s" preserveAspectRatio="none" href="data:image/png;base64,%s"/>`+"\n",
 		float(x0), float(c.height.Points()-y0), float(x1-x0), float(y0-y1), base64.StdEncoding.EncodeToString(raw.Bytes()))
+}
+
+// families are those of faces other than the sans-serif one of the document.
+var families = map[font.Variant]string{
+	"Serif": "Times New Roman, Times, Liberation Serif, serif",
+	"Mono":  "Courier New, Courier, Liberation Mono, monospace",
 }
 
 func (c *Canvas) opacity(attribute string) {

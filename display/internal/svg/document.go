@@ -26,7 +26,7 @@ func (c *Canvas) Document(title, description string) []byte {
 	fmt.Fprintf(&out, `<svg xmlns="http://www.w3.org/2000/svg" role="img" aria-labelledby="%s-title %s-desc"`, id, id)
 	fmt.Fprintf(&out, ` width="%s" height="%s" viewBox="0 0 %s %s"`,
 		number(pixels(c.width)), number(pixels(c.height)), number(c.width), number(c.height))
-	fmt.Fprintf(&out, ` style="max-width:100%%;height:auto" font-family="%s">`+"\n", fontFamily)
+	fmt.Fprintf(&out, ` style="max-width:100%%;height:auto" font-family="%s" stroke-linejoin="round">`+"\n", fontFamily)
 	fmt.Fprintf(&out, "<title id=\"%s-title\">%s</title>\n", id, Escape(title))
 	fmt.Fprintf(&out, "<desc id=\"%s-desc\">%s</desc>\n", id, Escape(description))
 	out.Write(c.body.Bytes())
