@@ -178,7 +178,7 @@ func TestPageTellsWhatTheNotebookHolds(t *testing.T) {
 }
 
 func TestSameNotebookGivesTheSameBytes(t *testing.T) {
-	if pageOf(t, sample) != pageOf(t, sample) {
+	if first, second := pageOf(t, sample), pageOf(t, sample); first != second {
 		t.Error("two pages of one notebook differ")
 	}
 }

@@ -125,7 +125,7 @@ func (p *parser) item() (string, error) {
 // script reads one script; a second of the same kind is an error.
 func (p *parser) script(before string) (string, error) {
 	p.next()
-	if strings.Trim(before, "<mo>′</") != "" {
+	if strings.ReplaceAll(before, "<mo>′</mo>", "") != "" {
 		return "", errUnknown
 	}
 	s, err := p.atom()
