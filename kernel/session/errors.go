@@ -243,7 +243,7 @@ func (u *unit) memberHint(msg string) string {
 func nearest(word string, candidates []string) string {
 	sort.Strings(candidates)
 	best, at := "", 0
-	limit := 1 + len(word)/3
+	limit := max(1, len(word)/3)
 	for _, c := range candidates {
 		if c == word {
 			continue

@@ -43,7 +43,7 @@ func (s *Session) hostFuncs() map[string]any {
 		"Print":      func(a ...any) { s.stderr(fmt.Sprint(printables(a)...)) },
 		"Println":    func(a ...any) { s.stderr(fmt.Sprintln(printables(a)...)) },
 		"ErrorsAs":   s.errorsAs,
-		"Depth":      checkDepth,
+		"Depth":      s.checkDepth,
 		"Go":         s.goroutine,
 		"Check":      s.checkError,
 		"Show":       func(values ...any) { s.show(nil, values) },
@@ -226,15 +226,16 @@ func (s *Session) errorsAs(err error, id int, target any) bool {
 	return false
 }
 
-// maxDepth bounds the stack of interpreted calls, in frames of the interpreter; a call takes about three.
-const maxDepth = 150_000
+// maxDepth bounds the stack of interpreted calls, in frames of the process; a call takes about four. Go's own limit, past which the
+// process ends, is far beyond.
+const maxDepth = 300_000
 
 var errTooDeep = errors.New("the calls go too deep: a function calls itself without end")
 
-// checkDepth panics when the stack is deeper than any program needs. Growing past Go's own limit would end the process.
-func checkDepth() {
+// checkDepth stops the cell when the stack is deeper than any program needs.
+func (s *Session) checkDepth() {
 	var pc [1]uintptr
 	if runtime.Callers(maxDepth, pc[:]) > 0 {
-		panic(errTooDeep)
+		s.machine.stopDeep()
 	}
 }

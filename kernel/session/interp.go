@@ -21,6 +21,14 @@ type machine struct {
 	imported bool
 	began    chan struct{} // closed when the running cell's first statement is reached
 	finished chan struct{} // closed when its last frame is left
+	tooDeep  atomic.Bool   // the running cell was stopped for the depth of its calls
+}
+
+// stopDeep ends the running evaluation because its calls go too deep. Unwinding so many frames by a panic would take minutes.
+func (m *machine) stopDeep() {
+	if m.tooDeep.CompareAndSwap(false, true) {
+		atomic.AddUint64(m.cancelCount(), 1)
+	}
 }
 
 func newMachine(host map[string]any) (*machine, error) {
@@ -33,6 +41,8 @@ func newMachine(host map[string]any) (*machine, error) {
 	for n, f := range host {
 		table[n] = reflect.ValueOf(f)
 	}
+	// The interpreter keys imports by file name. One file that holds every position gives all cells the same.
+	m.in.FileSet().AddFile("cells", 1, 1<<40)
 	return m, m.in.Use(interp.Exports{hostName + "/" + hostName: table})
 }
 
@@ -51,6 +61,8 @@ func (m *machine) compile(f *ast.File) (p *interp.Program, err error) {
 	if !m.imported {
 		f.Decls = append([]ast.Decl{importHost()}, f.Decls...)
 	}
+	f.Package = 1
+	anchor(f)
 	p, err = m.in.CompileAST(f)
 	if err == nil && p == nil {
 		err = errors.New("the interpreter gave no program")
@@ -80,6 +92,12 @@ func (m *machine) run(ctx context.Context, p *interp.Program) (err error, abando
 	finished := m.finished
 	before := atomic.LoadUint64(m.cancelCount())
 	ended := make(chan error, 1)
+	m.tooDeep.Store(false)
+	defer func() {
+		if m.tooDeep.Load() {
+			atomic.StoreUint64(m.cancelCount(), before)
+		}
+	}()
 	go func() {
 		_, err := m.in.ExecuteWithContext(inner, p)
 		ended <- err

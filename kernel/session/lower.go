@@ -42,6 +42,7 @@ type lowerer struct {
 	used    map[string]int
 	results []types.Type
 	named   []*types.Var // named results
+	loops   int          // around the statement being lowered
 	quiet   bool         // library source: no positions
 }
 
@@ -302,7 +303,7 @@ const (
 	callsVar    = "calls" + mark // counts calls of functions, for the depth guard
 	posVar      = "pos" + mark   // the statement being run
 	lineVar     = "line" + mark  // the statement of the cell being run
-	depthStride = 512
+	depthStride = 2048
 )
 
 // declare gives a local variable its name in the lowered code.

@@ -98,7 +98,9 @@ func (l *lowerer) forStmt(s *ast.ForStmt, name string) []ast.Stmt {
 	if s.Post != nil {
 		post = l.plainStmt(s.Post)
 	}
+	l.loops++
 	body := l.block(s.Body)
+	l.loops--
 	if len(post) == 1 {
 		out.Post = post[0]
 	} else if len(post) > 1 {
@@ -200,6 +202,8 @@ func mentions(l *lowerer, e ast.Expr, is map[types.Object]bool) bool {
 
 // freshFor lowers a loop whose variables are kept: each iteration copies the variables of the one before, then runs the last clause.
 func (l *lowerer) freshFor(s *ast.ForStmt, name string, vars []*types.Var) []ast.Stmt {
+	l.loops++
+	defer func() { l.loops-- }()
 	init := l.stmt(s.Init)
 	first := l.temp("first")
 	var before, top []ast.Stmt
@@ -237,6 +241,8 @@ func (l *lowerer) redeclare(v *types.Var) string {
 
 // rangeStmt lowers a range loop by what it ranges over.
 func (l *lowerer) rangeStmt(s *ast.RangeStmt, name string) []ast.Stmt {
+	l.loops++
+	defer func() { l.loops-- }()
 	pos := l.at(s.Pos())
 	t := l.typeOf(s.X).Underlying()
 	if p, ok := t.(*types.Pointer); ok {
@@ -544,45 +550,82 @@ func (l *lowerer) selectReceive(a *ast.AssignStmt, ch ast.Expr) (ast.Stmt, []ast
 	return recv, body
 }
 
-// frozen evaluates the function and the arguments of a call now and returns the call that is left.
-func (l *lowerer) frozen(c *ast.CallExpr) ([]ast.Stmt, *ast.CallExpr) {
+// frozen separates what a call evaluates now, as parameters with their arguments, from the call itself, which refers to them.
+func (l *lowerer) frozen(c *ast.CallExpr) (params []*ast.Field, args []ast.Expr, left *ast.CallExpr) {
 	fun := ast.Unparen(c.Fun)
-	tv := l.u.info.Types[fun]
-	if tv.IsBuiltin() || tv.IsType() {
-		return l.frozenBuiltin(c)
-	}
-	x, ok := l.call(c).(*ast.CallExpr)
+	x, ok := l.expr(c).(*ast.CallExpr)
 	if !ok {
 		l.fail(c.Pos(), "this call cannot be deferred or started")
 	}
-	sig, ok := l.typeOf(fun).Underlying().(*types.Signature)
-	if !ok {
-		return nil, x
+	ts := l.frozenTypes(c, fun, len(x.Args))
+	freeze := func(t, a ast.Expr) ast.Expr {
+		n := l.temp("f")
+		params = append(params, &ast.Field{Names: []*ast.Ident{ast.NewIdent(n)}, Type: t})
+		args = append(args, a)
+		return ast.NewIdent(n)
 	}
-	return l.freezeArgs(x, c, fun, sig)
-}
-
-// freezeArgs moves the lowered arguments into variables where that makes a difference.
-func (l *lowerer) freezeArgs(x *ast.CallExpr, c *ast.CallExpr, fun ast.Expr, sig *types.Signature) ([]ast.Stmt, *ast.CallExpr) {
-	var out []ast.Stmt
 	for i, a := range x.Args {
-		if _, lit := a.(*ast.BasicLit); lit || isNilIdent(a) {
+		if _, lit := a.(*ast.BasicLit); lit || isNilIdent(a) || ts[i] == nil {
 			continue
 		}
-		n := l.temp("f")
-		out = append(out, define(n, a))
-		x.Args[i] = ast.NewIdent(n)
+		x.Args[i] = freeze(ts[i], a)
 	}
-	if _, lit := ast.Unparen(x.Fun).(*ast.FuncLit); !lit {
-		if id, ok := x.Fun.(*ast.Ident); !ok || !isInternal(id.Name) {
-			if sel, ok := x.Fun.(*ast.SelectorExpr); !ok || !isHost(sel) {
-				n := l.temp("f")
-				out = append(out, define(n, x.Fun))
-				x.Fun = ast.NewIdent(n)
+	if l.computedCallee(x.Fun) {
+		x.Fun = freeze(l.typ(l.typeOf(fun)), x.Fun)
+	}
+	return params, args, x
+}
+
+// computedCallee reports whether what is called has to be evaluated now.
+func (l *lowerer) computedCallee(f ast.Expr) bool {
+	switch f := f.(type) {
+	case *ast.ParenExpr:
+		return false // a function literal
+	case *ast.Ident:
+		return !isInternal(f.Name) && types.Universe.Lookup(f.Name) == nil
+	case *ast.SelectorExpr:
+		return !isHost(f)
+	}
+	return true
+}
+
+// frozenTypes lists the types of the arguments of a lowered call, nil where an argument may stay where it is.
+func (l *lowerer) frozenTypes(c *ast.CallExpr, fun ast.Expr, n int) []ast.Expr {
+	out := make([]ast.Expr, n)
+	if tv := l.u.info.Types[fun]; tv.IsBuiltin() || tv.IsType() {
+		if len(c.Args) != n {
+			return out
+		}
+		for i, a := range c.Args {
+			t := l.typeOf(a)
+			if name, ok := fun.(*ast.Ident); ok && (name.Name == "panic" || name.Name == "print" || name.Name == "println") {
+				t = types.NewInterfaceType(nil, nil)
+			}
+			if !isNil(t) {
+				out[i] = l.typ(types.Default(t))
+			}
+		}
+		return out
+	}
+	sig, ok := l.typeOf(fun).Underlying().(*types.Signature)
+	if !ok {
+		return out
+	}
+	at := 0
+	if n == len(c.Args)+1 { // the receiver of a method made in cells goes first
+		if s, ok := fun.(*ast.SelectorExpr); ok {
+			if sel, ok := l.u.info.Selections[s]; ok {
+				tg := l.method(l.expr(s.X), l.typeOf(s.X), s.Sel.Name, l.lookupPackage(sel))
+				out[0], at = l.typ(l.recvType(tg)), 1
 			}
 		}
 	}
-	return out, x
+	for i := range c.Args {
+		if at+i < n {
+			out[at+i] = l.typ(paramType(sig, i, c.Ellipsis.IsValid()))
+		}
+	}
+	return out
 }
 
 func isHost(s *ast.SelectorExpr) bool {
@@ -595,43 +638,57 @@ func isNilIdent(e ast.Expr) bool {
 	return ok && id.Name == "nil"
 }
 
-func (l *lowerer) frozenBuiltin(c *ast.CallExpr) ([]ast.Stmt, *ast.CallExpr) {
-	x, ok := l.builtin(c, ast.Unparen(c.Fun)).(*ast.CallExpr)
-	if !ok {
-		l.fail(c.Pos(), "this call cannot be deferred or started")
-	}
-	var out []ast.Stmt
-	for i, a := range x.Args {
-		if _, lit := a.(*ast.BasicLit); lit || isNilIdent(a) {
-			continue
-		}
-		n := l.temp("f")
-		out = append(out, define(n, a))
-		x.Args[i] = ast.NewIdent(n)
-	}
-	return out, x
-}
-
 // goStmt starts a goroutine through the host, which catches its panics and counts it.
 func (l *lowerer) goStmt(s *ast.GoStmt) []ast.Stmt {
-	out, x := l.frozen(s.Call)
-	body := &ast.FuncLit{Type: &ast.FuncType{Params: &ast.FieldList{}}, Body: &ast.BlockStmt{List: []ast.Stmt{exprStmt(x)}}}
-	return scoped(append(out, exprStmt(hostCall("Go", body))))
+	params, args, x := l.frozen(s.Call)
+	body := funcLit(nil, exprStmt(x))
+	start := exprStmt(hostCall("Go", body, intLit(l.position(s.Pos()))))
+	return []ast.Stmt{exprStmt(call(paren(funcLit(params, start)), args...))}
 }
 
-// deferStmt defers a call. A function literal without arguments and a cell's function go as they are, so that recover works in them.
+func funcLit(params []*ast.Field, body ...ast.Stmt) *ast.FuncLit {
+	return &ast.FuncLit{Type: &ast.FuncType{Params: &ast.FieldList{List: params}}, Body: &ast.BlockStmt{List: body}}
+}
+
+// deferStmt defers a call. A function literal and a cell's function go as they are, so that recover works in them. The arguments are
+// put into new variables, for the interpreter keeps only where they were.
 func (l *lowerer) deferStmt(s *ast.DeferStmt) []ast.Stmt {
 	fun := ast.Unparen(s.Call.Fun)
+	var params []*ast.Field
+	var args []ast.Expr
+	var x *ast.CallExpr
 	if lit, ok := fun.(*ast.FuncLit); ok {
-		args := l.arguments(s.Call, l.typeOf(lit).(*types.Signature), boxed)
-		return []ast.Stmt{&ast.DeferStmt{Call: spread(call(l.funcLit(lit), args...), s.Call.Ellipsis.IsValid())}}
+		args = l.arguments(s.Call, l.typeOf(lit).(*types.Signature), boxed)
+		x = spread(call(l.funcLit(lit), args...), s.Call.Ellipsis.IsValid())
+		sig := l.typeOf(lit).(*types.Signature)
+		return l.deferFresh(x, func(i int) ast.Expr { return l.typ(paramType(sig, i, s.Call.Ellipsis.IsValid())) })
 	}
-	out, x := l.frozen(s.Call)
 	if l.isOwnFunc(fun) {
-		return append(out, &ast.DeferStmt{Call: x})
+		if x, ok := l.call(s.Call).(*ast.CallExpr); ok {
+			ts := l.frozenTypes(s.Call, fun, len(x.Args))
+			return l.deferFresh(x, func(i int) ast.Expr { return ts[i] })
+		}
 	}
-	thunk := &ast.FuncLit{Type: &ast.FuncType{Params: &ast.FieldList{}}, Body: &ast.BlockStmt{List: []ast.Stmt{exprStmt(x)}}}
-	return append(out, &ast.DeferStmt{Call: call(thunk)})
+	params, args, x = l.frozen(s.Call)
+	return l.deferFresh(call(funcLit(params, exprStmt(x)), args...), func(i int) ast.Expr { return params[i].Type })
+}
+
+func (l *lowerer) deferFresh(x *ast.CallExpr, typ func(i int) ast.Expr) []ast.Stmt {
+	var out []ast.Stmt
+	for i, a := range x.Args {
+		if _, lit := a.(*ast.BasicLit); lit || isNilIdent(a) || typ(i) == nil {
+			continue
+		}
+		if _, lit := a.(*ast.CompositeLit); lit {
+			n := l.temp("d")
+			out = append(out, varStmt(n, typ(i), a))
+			a = ast.NewIdent(n)
+		}
+		n := l.temp("d")
+		out = append(out, varStmt(n, typ(i), a))
+		x.Args[i] = ast.NewIdent(n)
+	}
+	return append(out, &ast.DeferStmt{Call: x})
 }
 
 // isOwnFunc reports whether a callee is a function or method made in cells, called directly.

@@ -159,6 +159,11 @@ func (l *lowerer) store(obj *types.Var, x ast.Expr) []ast.Stmt {
 		return []ast.Stmt{assign(ast.NewIdent(l.declare(obj)), x), l.assigned(obj)}
 	}
 	t := l.typ(obj.Type())
+	if _, lit := x.(*ast.CompositeLit); lit && l.loops > 0 {
+		// The interpreter would build the literal in the variable of the iteration before, which a closure may still have.
+		n := l.temp("c")
+		return []ast.Stmt{varStmt(n, t, x), varStmt(l.declare(obj), l.typ(obj.Type()), ast.NewIdent(n))}
+	}
 	return []ast.Stmt{varStmt(l.declare(obj), t, x)}
 }
 

@@ -67,6 +67,9 @@ func (s *Session) execute(r *run, prog *interp.Program, u *unit, low *lowered) R
 // outcome turns the end of an evaluation into an error, or nil.
 func (s *Session) outcome(r *run, err error, abandoned bool) *Error {
 	frames := s.machine.complain.take()
+	if s.machine.tooDeep.Load() {
+		return s.errorAt(s.placeOf(*s.pos), "Panic", errTooDeep.Error()).withCaller(s, nil)
+	}
 	if abandoned {
 		e := s.interruptedError()
 		return e.withHint("something in the cell cannot be stopped and goes on in the background")
@@ -97,10 +100,9 @@ func (s *Session) panicError(v any, frames []string) *Error {
 		return s.stopError(v)
 	case interruption:
 		return s.interruptedError()
+	case string:
+		return s.errorAt(s.placeOf(*s.pos), "Panic", oneLine(goError(errors.New(v)).Error())).withCaller(s, frames)
 	case error:
-		if errors.Is(v, errTooDeep) {
-			return s.errorAt(s.placeOf(*s.pos), "Panic", v.Error()).withCaller(s, frames)
-		}
 		var st *stop
 		if errors.As(v, &st) {
 			return s.stopError(st)
@@ -287,7 +289,7 @@ func (s *Session) assign(name string) {
 func (s *Session) bindVariable(name string, ptr any) { s.bound[name] = reflect.ValueOf(ptr) }
 
 // goroutine starts a goroutine of a cell: its panics are reported, its output goes to the cell that started it.
-func (s *Session) goroutine(f func()) {
+func (s *Session) goroutine(f func(), pos int) {
 	r := s.runningRun()
 	go func() {
 		id := goroutineID()
@@ -295,7 +297,7 @@ func (s *Session) goroutine(f func()) {
 		s.strays[id] = r
 		s.mu.Unlock()
 		defer func() {
-			s.reportPanic(recover(), r)
+			s.reportPanic(recover(), r, pos)
 			s.mu.Lock()
 			delete(s.strays, id)
 			s.mu.Unlock()
@@ -305,7 +307,7 @@ func (s *Session) goroutine(f func()) {
 }
 
 // reportPanic tells the cell that a goroutine of it panicked; the process lives on.
-func (s *Session) reportPanic(v any, r *run) {
+func (s *Session) reportPanic(v any, r *run, pos int) {
 	if v == nil || r == nil {
 		return
 	}
@@ -313,14 +315,16 @@ func (s *Session) reportPanic(v any, r *run) {
 	if _, ok := v.(interruption); ok {
 		return
 	}
-	at := s.placeOf(*s.pos)
-	where := ""
-	if at.src != nil {
+	if text, ok := v.(string); ok {
+		v = goError(errors.New(text))
+	}
+	where := "a goroutine"
+	if at := s.placeOf(pos); at.src != nil {
 		line, _ := at.src.position(at.offset)
-		where = fmt.Sprintf(" (%s, line %d)", at.src.label(), line)
+		where = fmt.Sprintf("the goroutine started in %s, line %d,", at.src.label(), line)
 	}
 	s.machine.complain.take()
-	r.out.Stream("stderr", "a goroutine panicked: "+oneLine(panicText(v))+where+"\n")
+	r.out.Stream("stderr", where+" panicked: "+oneLine(panicText(v))+"\n")
 }
 
 func goroutineID() int64 {
