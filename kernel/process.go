@@ -30,6 +30,9 @@ func (k *kernel) watchSignals() func() {
 	}
 }
 
+// parentPause is the time between looks at the parent process.
+const parentPause = 500 * time.Millisecond
+
 // watchParent calls gone when the process that started the kernel, of which
 // Jupyter gives the number in JPY_PARENT_PID, has ended: nobody could end the
 // kernel then. The function it returns ends the watch.
@@ -44,7 +47,7 @@ func watchParent(l *log.Logger, gone func()) func() {
 			select {
 			case <-ctx.Done():
 				return
-			case <-time.After(time.Second):
+			case <-time.After(parentPause):
 			}
 		}
 		l.Printf("the parent process %d is gone; the kernel ends", pid)
