@@ -87,7 +87,7 @@ func (r *recorder) merge(at ast.Node, cond int32, a, b value) value {
 	case a.kind == kFloat && b.kind == kFloat:
 		return float(r.g.choose(cond, a.id(), b.id()))
 	case (a.kind == kBool || a.kind == kTruth) && (b.kind == kBool || b.kind == kTruth):
-		return r.truthOf(r.g.choose(cond, r.node(a), r.node(b)))
+		return r.truthOf(r.either(cond, r.node(a), r.node(b)))
 	case a.kind == kFace && b.kind == kFace:
 		fa, fb := a.ref.(*face), b.ref.(*face)
 		if sameType(fa.typ, fb.typ) {

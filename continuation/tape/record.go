@@ -60,10 +60,10 @@ func Record(src *Source, set Settings) (*Program, error) {
 
 // A recorder is one pass over a model.
 type recorder struct {
-	src *Source
-	set Settings
-	g   *graph
-	p   *Program
+	src      *Source
+	settings Settings
+	g        *graph
+	p        *Program
 
 	guarded map[token.Pos]bool // conditions that are guards
 	path    int32              // node of the conditions under which this runs, -1 for none
@@ -80,7 +80,7 @@ type recorder struct {
 }
 
 func newRecorder(src *Source, set Settings, guarded map[token.Pos]bool) *recorder {
-	r := &recorder{src: src, set: set, g: newGraph(), guarded: guarded, path: -1, outer: map[types.Object]*cell{}}
+	r := &recorder{src: src, settings: set, g: newGraph(), guarded: guarded, path: -1, outer: map[types.Object]*cell{}}
 	r.p = &Program{g: r.g, fset: src.Fset, place: src.place}
 	r.g.tracing, r.g.limit, r.g.leaf = true, maxNodes, r.sampleOf
 	r.g.full = func() { r.inside = nil; r.refuse(nil, "the model takes more than %d operations", maxNodes) }
@@ -137,7 +137,7 @@ func (r *recorder) work(at ast.Node, n int) {
 		r.refuse(at, "the model takes too long to record")
 	}
 	if before>>12 != r.steps>>12 {
-		if err := r.set.Context.Err(); err != nil {
+		if err := r.settings.Context.Err(); err != nil {
 			panic(stopped{err})
 		}
 	}
@@ -146,13 +146,13 @@ func (r *recorder) work(at ast.Node, n int) {
 func (r *recorder) sampleOf(n node) float64 {
 	switch n.op {
 	case opState:
-		if int(n.a) < len(r.set.X) {
-			return r.set.X[n.a]
+		if int(n.a) < len(r.settings.X) {
+			return r.settings.X[n.a]
 		}
 		return 1
 	case opParam:
-		if int(n.a) < len(r.set.P) {
-			return r.set.P[n.a]
+		if int(n.a) < len(r.settings.P) {
+			return r.settings.P[n.a]
 		}
 		return r.p.values[n.a]
 	case opHidden:
@@ -171,7 +171,7 @@ func (r *recorder) model() {
 		params := r.params(node, sig.Params().At(1).Type())
 		r.flatten(node, r.invoke(node, f, []value{state, params}), &r.p.out)
 	case sig.Params().Len() == 3 && sig.Results().Len() == 0 && floats(sig.Params().At(0).Type()) && floats(sig.Params().At(2).Type()):
-		r.p.n = r.set.States
+		r.p.n = r.settings.States
 		u, out := r.newGroup(r.p.n), r.newGroup(r.p.n)
 		nan := float(r.g.constant(nan))
 		for i := range u.cells {
@@ -233,8 +233,7 @@ func (r *recorder) symbols(at ast.Node, t types.Type, op Op, count *int) value {
 		g := r.newGroup(u.NumFields())
 		for i := range g.cells {
 			if u.Field(i).Name() == "_" {
-				g.cells[i].v = r.zero(at, u.Field(i).Type())
-				continue
+				continue // has no name, so it is no state and no parameter
 			}
 			g.cells[i].v = r.symbols(at, u.Field(i).Type(), op, count)
 		}
@@ -255,6 +254,7 @@ func (r *recorder) flatten(at ast.Node, v value, out *[]int32) {
 	switch v.kind {
 	case kFloat:
 		*out = append(*out, v.id())
+	case kNone:
 	case kGroup:
 		for i := range v.ref.(*group).cells {
 			r.flatten(at, v.ref.(*group).cells[i].v, out)
@@ -267,7 +267,7 @@ func (r *recorder) flatten(at ast.Node, v value, out *[]int32) {
 // params returns the parameters: floats are symbols, the rest is as it stands in
 // the value of the settings.
 func (r *recorder) params(at ast.Node, t types.Type) value {
-	return r.parameter(at, t, r.set.Params)
+	return r.parameter(at, t, r.settings.Params)
 }
 
 func (r *recorder) parameter(at ast.Node, t types.Type, v reflect.Value) value {
@@ -286,8 +286,7 @@ func (r *recorder) parameter(at ast.Node, t types.Type, v reflect.Value) value {
 		g := r.newGroup(u.NumFields())
 		for i := range g.cells {
 			if u.Field(i).Name() == "_" {
-				g.cells[i].v = r.zero(at, u.Field(i).Type())
-				continue
+				continue // has no name, so it is no state and no parameter
 			}
 			g.cells[i].v = r.parameter(at, u.Field(i).Type(), field(v, i))
 		}
@@ -308,7 +307,7 @@ func (r *recorder) parameter(at ast.Node, t types.Type, v reflect.Value) value {
 		}
 		return sliceOf(g)
 	}
-	return r.snapshot(at, t, v, "a parameter")
+	return r.snapshot(t, v)
 }
 
 func field(v reflect.Value, i int) reflect.Value {

@@ -9,19 +9,19 @@ import (
 type kind uint8
 
 const (
-	kNone   kind = iota
-	kFloat       // n is a node
-	kInt         // n is the value, of any integer type
-	kBool        // n is 0 or 1
-	kTruth       // n is a node: a condition on floats
-	kString      // ref is a string
-	kGroup       // ref is a *group: a struct or an array
-	kSlice       // ref is a *slice
-	kPointer     // ref is a *cell
-	kFunc        // ref is a *closure
-	kFace        // ref is a *face: an interface that is not nil
-	kNil         // of any type that has it
-	kTuple       // ref is a []value: several results
+	kNone    kind = iota
+	kFloat        // n is a node
+	kInt          // n is the value, of any integer type
+	kBool         // n is 0 or 1
+	kTruth        // n is a node: a condition on floats
+	kString       // ref is a string
+	kGroup        // ref is a *group: a struct or an array
+	kSlice        // ref is a *slice
+	kPointer      // ref is a *cell
+	kFunc         // ref is a *closure
+	kFace         // ref is a *face: an interface that is not nil
+	kNil          // of any type that has it
+	kTuple        // ref is a []value: several results
 )
 
 // A value is what an expression has: a symbol for floats, the thing itself for
@@ -67,6 +67,7 @@ type closure struct {
 	env  map[types.Object]*cell // what lit sees of its surroundings
 	math string                 // a function of package math
 	recv *value                 // bound receiver of a method value
+	expr bool                   // T.method: the receiver is the first argument
 	sig  *types.Signature
 }
 
@@ -135,7 +136,9 @@ func (r *recorder) zero(at ast.Node, t types.Type) value {
 	case *types.Struct:
 		g := r.newGroup(u.NumFields())
 		for i := range g.cells {
-			g.cells[i].v = r.zero(at, u.Field(i).Type())
+			if u.Field(i).Name() != "_" {
+				g.cells[i].v = r.zero(at, u.Field(i).Type())
+			}
 		}
 		return value{kind: kGroup, ref: g}
 	case *types.Array:
