@@ -160,7 +160,7 @@ func (s *sheet) bar(style draw.LineStyle, c, u vg.Point, half vg.Length) {
 
 // block keeps labels off a square about a point.
 func (s *sheet) block(c vg.Point, half vg.Length) {
-	s.room.Block(vg.Rectangle{
+	s.room.BlockMark(vg.Rectangle{
 		Min: vg.Point{X: c.X - half, Y: c.Y - half},
 		Max: vg.Point{X: c.X + half, Y: c.Y + half},
 	})

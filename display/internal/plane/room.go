@@ -2,6 +2,7 @@ package plane
 
 import (
 	"math"
+	"slices"
 
 	"gonum.org/v1/plot/vg"
 )
@@ -10,11 +11,15 @@ import (
 type Room struct {
 	Frame vg.Rectangle
 	boxes []vg.Rectangle
+	marks []vg.Rectangle
 	lines [][]vg.Point
 }
 
-// Block keeps labels off a rectangle.
+// Block keeps labels and leaders off a rectangle.
 func (r *Room) Block(box vg.Rectangle) { r.boxes = append(r.boxes, box) }
+
+// BlockMark keeps labels off a rectangle; leaders avoid it where they can.
+func (r *Room) BlockMark(box vg.Rectangle) { r.marks = append(r.marks, box) }
 
 // BlockLine keeps labels off a line.
 func (r *Room) BlockLine(line []vg.Point) {
@@ -29,12 +34,8 @@ func (r *Room) Free(box vg.Rectangle) bool {
 }
 
 func (r *Room) taken(box vg.Rectangle) bool {
-	for _, b := range r.boxes {
-		if Overlap(b, box) {
-			return true
-		}
-	}
-	return false
+	overlaps := func(b vg.Rectangle) bool { return Overlap(b, box) }
+	return slices.ContainsFunc(r.boxes, overlaps) || slices.ContainsFunc(r.marks, overlaps)
 }
 
 // crossings counts the segments of lines that run through a rectangle.
@@ -150,16 +151,21 @@ func (q Request) leader(box vg.Rectangle) []vg.Point {
 	}
 }
 
-// leaderCrossings counts the lines that a leader crosses, and reports false when
-// it runs over a label or a mark other than its own.
+// leaderCrossings counts the lines and the marks that a leader crosses, its own
+// mark aside, and reports false when it runs over a label.
 func (r *Room) leaderCrossings(leader []vg.Point, q Request) (int, bool) {
 	a, b := leader[0], leader[1]
 	for _, box := range r.boxes {
-		if touches(a, b, box) && !contains(grow(box, 1), q.Anchor) {
+		if touches(a, b, box) {
 			return 0, false
 		}
 	}
 	n := 0
+	for _, box := range r.marks {
+		if touches(a, b, box) && ToBox(q.Anchor, box) > 8 {
+			n++
+		}
+	}
 	for _, line := range r.lines {
 		for i := 1; i < len(line); i++ {
 			if meet(a, b, line[i-1], line[i]) {
@@ -246,17 +252,20 @@ func (r *Room) corner(size vg.Point, right, top bool) vg.Rectangle {
 func (r *Room) Copy() *Room {
 	return &Room{
 		Frame: r.Frame,
-		boxes: append([]vg.Rectangle(nil), r.boxes...),
-		lines: append([][]vg.Point(nil), r.lines...),
+		boxes: slices.Clone(r.boxes),
+		marks: slices.Clone(r.marks),
+		lines: slices.Clone(r.lines),
 	}
 }
 
-// Count returns how much lies on a rectangle: segments of lines, and labels.
+// Count returns how much lies on a rectangle: segments of lines, labels and marks.
 func (r *Room) Count(box vg.Rectangle) int {
 	n := r.crossings(box)
-	for _, b := range r.boxes {
-		if Overlap(b, box) {
-			n += 3
+	for _, list := range [][]vg.Rectangle{r.boxes, r.marks} {
+		for _, b := range list {
+			if Overlap(b, box) {
+				n += 3
+			}
 		}
 	}
 	return n
