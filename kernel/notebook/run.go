@@ -6,7 +6,10 @@ import (
 	"maps"
 	"reflect"
 	"strings"
+	"unicode/utf8"
 
+	"brinkline/display"
+	"brinkline/kernel/internal/help"
 	"brinkline/kernel/session"
 )
 
@@ -100,10 +103,29 @@ func runCell(ctx context.Context, cell *Cell, number int, ex Executor, out *cell
 func contained(ctx context.Context, ex Executor, c session.Cell, out *cellOutput) (r session.Result) {
 	defer func() {
 		if cause := recover(); cause != nil {
-			r = session.Result{Err: &session.Error{Name: "InternalError", Message: fmt.Sprintf("brinkline itself failed here: %v", cause)}}
+			r = session.Result{Err: &session.Error{Name: "InternalError", Message: fmt.Sprintf("the kernel failed: %v", cause)}}
 		}
 	}()
+	if name, ok := help.On(c.Source); ok {
+		return askedFor(name, ex)
+	}
 	return ex.Run(ctx, c, out)
+}
+
+// askedFor answers a cell that asks for help on a name. There is no reader to
+// show it to; only a name of which nothing is known is an error, as with a front
+// end.
+func askedFor(name string, ex Executor) (r session.Result) {
+	inspector, ok := ex.(interface {
+		Inspect(source string, cursor int) (display.Bundle, bool)
+	})
+	if !ok {
+		return r
+	}
+	if _, found := inspector.Inspect(name, utf8.RuneCountInString(name)); !found {
+		r.Err = &session.Error{Name: "NameError", Message: "nothing is known of " + name}
+	}
+	return r
 }
 
 // executable returns the cells that a run executes.

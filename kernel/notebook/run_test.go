@@ -136,10 +136,10 @@ func TestInterruptStopsEvenWhereErrorsAreExpected(t *testing.T) {
 func TestAnExecutorThatBreaksIsAnErrorOfTheCell(t *testing.T) {
 	nb := cells(t, "a", "breaks")
 	err := Run(context.Background(), nb, script{"a": says("1"), "breaks": func(session.Output) session.Result { panic("out of ideas") }}, nil)
-	if err == nil || err.Error() != "cell 2 (id c2): brinkline itself failed here: out of ideas" {
+	if err == nil || err.Error() != "cell 2 (id c2): the kernel failed: out of ideas" {
 		t.Errorf("error %v", err)
 	}
-	expect(t, nb, "1: streamstdout(1)", "2: error(InternalError brinkline itself failed here: out of ideas)")
+	expect(t, nb, "1: streamstdout(1)", "2: error(InternalError the kernel failed: out of ideas)")
 }
 
 func TestInterruptBetweenCells(t *testing.T) {
@@ -198,6 +198,25 @@ func TestFilesWithoutCellIDsGetNone(t *testing.T) {
 	}
 	if strings.Contains(string(nb.Bytes()), `"id"`) {
 		t.Errorf("an id was added:\n%s", nb.Bytes())
+	}
+}
+
+// helper is an executor that knows one name.
+type helper struct{ script }
+
+func (helper) Inspect(source string, _ int) (display.Bundle, bool) {
+	return display.Bundle{}, source == "known"
+}
+
+func TestCellsThatAskForHelpShowNothing(t *testing.T) {
+	nb := cells(t, "known?", "?unknown")
+	err := Run(context.Background(), nb, helper{}, nil)
+	if err == nil || err.Error() != "cell 2 (id c2): nothing is known of unknown" {
+		t.Errorf("error %v", err)
+	}
+	expect(t, nb, "1:", "2: error(NameError nothing is known of unknown)")
+	if err := Run(context.Background(), cells(t, "unknown?"), script{}, nil); err != nil {
+		t.Errorf("an executor without help: %v", err)
 	}
 }
 
