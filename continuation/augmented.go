@@ -198,6 +198,8 @@ func (t *tracer) roundingOf(lambda float64) float64 {
 // settleSpectrum sets the eigenvalues at a special point and the count without
 // the critical ones, which are those nearest the imaginary axis.
 func (t *tracer) settleSpectrum(a *node, critical int) error {
+	defer func(usual bool) { t.stable.want = usual }(t.stable.want)
+	t.stable.want = true
 	if err := t.spectrum(a); err != nil {
 		return err
 	}

@@ -35,7 +35,7 @@ func (t *tracer) changes(c *arc) changes {
 	if c.a.special != nil || c.b.special != nil {
 		return ch
 	}
-	if t.plan.eigenvalues && !t.s.m.balance {
+	if t.plan.spectra != noValues && !t.s.m.balance {
 		ch.count = c.b.unstable - c.a.unstable
 	}
 	return ch
@@ -43,7 +43,7 @@ func (t *tracer) changes(c *arc) changes {
 
 // accounts reports whether the change of the count is that of the event.
 func (t *tracer) accounts(ch changes, by int) bool {
-	return !t.plan.eigenvalues || t.s.m.balance || ch.count == by || ch.count == -by
+	return t.plan.spectra == noValues || t.s.m.balance || ch.count == by || ch.count == -by
 }
 
 func (t *tracer) resolve(c *arc, depth int) ([]*node, error) {

@@ -16,17 +16,25 @@ const (
 // hidden looks for events that cancel on the arcs (z, a) and (a, b), and returns
 // the special points found on each.
 func (t *tracer) hidden(z, a, b *node) (before, after []*node, err error) {
-	if z.eigenvalues == nil || a.eigenvalues == nil || b.eigenvalues == nil ||
-		z.special != nil || a.special != nil || b.special != nil {
+	if t.plan.spectra == noValues || z.special != nil || a.special != nil || b.special != nil {
 		return nil, nil, nil
 	}
-	s, ok := vertex(z, a, b)
-	if !ok {
+	old, new := t.proved(z, a, b)
+	if new && old {
 		return nil, nil, nil
 	}
-	if s < a.arc {
+	defer func(usual bool) { t.stable.want = usual }(t.stable.want)
+	t.stable.want = true
+	for _, n := range []*node{z, a, b} {
+		if err := t.values(n); err != nil {
+			return nil, nil, notRefusal(err)
+		}
+	}
+	switch s, ok := vertex(z, a, b); {
+	case !ok:
+	case s < a.arc && !old:
 		before, err = t.probe(z, a, s, hiddenTrys)
-	} else {
+	case s >= a.arc && !new:
 		after, err = t.probe(a, b, s, hiddenTrys)
 	}
 	return before, after, err

@@ -10,7 +10,15 @@ import (
 // pair that crosses, by bracketing with the ITP method (Oliveira & Takahashi, ACM
 // Transactions on Mathematical Software 47 (2021) 5). Two real eigenvalues that
 // cross one after the other are not a Hopf point.
-func (t *tracer) refineHopf(c *arc) (*node, error) {
+func (t *tracer) refineHopf(c *arc) (found *node, err error) {
+	err = t.withValues(c, func() error {
+		found, err = t.locateHopf(c)
+		return err
+	})
+	return found, err
+}
+
+func (t *tracer) locateHopf(c *arc) (*node, error) {
 	// Eigenvalues have the error of the point they are taken at.
 	defer func(usual float64) { t.tolerance = usual }(t.tolerance)
 	t.tolerance = math.Min(t.tolerance, 1e-12)

@@ -35,7 +35,15 @@ const multipleArc = 1e-5 // scaled length below which several eigenvalues are ta
 
 // refineMultiple finds the point on a short arc at which several real eigenvalues
 // cross zero together.
-func (t *tracer) refineMultiple(c *arc) (*node, error) {
+func (t *tracer) refineMultiple(c *arc) (found *node, err error) {
+	err = t.withValues(c, func() error {
+		found, err = t.locateMultiple(c)
+		return err
+	})
+	return found, err
+}
+
+func (t *tracer) locateMultiple(c *arc) (*node, error) {
 	k := min(c.a.unstable, c.b.unstable)
 	crossing := max(c.a.unstable, c.b.unstable) - k
 	part := func(a *node) float64 { return real(a.eigenvalues[k]) }

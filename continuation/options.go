@@ -24,7 +24,7 @@ type plan struct {
 	maxTurn     float64 // radians between tangents
 	local       string  // local parameter: arclength, natural, automatic, or a state's name
 	up, down    bool
-	eigenvalues bool
+	spectra     spectra
 }
 
 type bound struct {
@@ -42,7 +42,7 @@ func newPlan(opts []FollowOption) (*plan, error) {
 	p := &plan{
 		low: math.Inf(-1), high: math.Inf(1), maxSteps: 2000,
 		first: 0.01, least: 1e-8, most: 0.05, tolerance: 1e-10, maxTurn: 0.5,
-		up: true, down: true, eigenvalues: true,
+		up: true, down: true,
 	}
 	for _, set := range opts {
 		if err := set(p); err != nil {
@@ -211,8 +211,15 @@ func Downward() FollowOption {
 	return func(p *plan) error { p.up, p.down = false, true; return nil }
 }
 
-// WithoutEigenvalues leaves out the eigenvalues: stability is not known then, and
-// Hopf points are not found.
+// WithEigenvalues keeps the eigenvalues at every point. Without it they are there at
+// the start, at special points, and where the number of unstable ones could not be
+// proved more cheaply; the number itself is always known.
+func WithEigenvalues() FollowOption {
+	return func(p *plan) error { p.spectra = allValues; return nil }
+}
+
+// WithoutEigenvalues leaves out the eigenvalues and their count: stability is not
+// known then, and Hopf points are not found.
 func WithoutEigenvalues() FollowOption {
-	return func(p *plan) error { p.eigenvalues = false; return nil }
+	return func(p *plan) error { p.spectra = noValues; return nil }
 }

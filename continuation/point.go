@@ -3,6 +3,8 @@ package continuation
 import (
 	"fmt"
 	"math"
+
+	"brinkline/continuation/linalg"
 )
 
 // A Point is a steady state of a model, alone or on a branch. Its numbers are in
@@ -17,7 +19,8 @@ type Point struct {
 	// Tangent is the unit tangent of the branch in scaled arclength s, given in
 	// the user's units: dx/ds (n components), then dλ/ds. nil off a branch.
 	Tangent []float64
-	// Eigenvalues of f_x by falling real part; nil when not asked for.
+	// Eigenvalues of f_x by falling real part; nil when not asked for: see
+	// [WithEigenvalues] and [Point.Spectrum].
 	Eigenvalues []complex128
 	// Unstable is the number of eigenvalues with positive real part, -1 when
 	// eigenvalues were not asked for. At a special point the eigenvalues that
@@ -67,6 +70,21 @@ func (p *Point) At(name string) (float64, error) {
 	}
 	_, err := p.model.Variable(name)
 	return math.NaN(), err
+}
+
+// Spectrum returns the eigenvalues of f_x by falling real part, computing them when
+// the point does not hold them.
+func (p *Point) Spectrum() ([]complex128, error) {
+	if p.Eigenvalues != nil {
+		return p.Eigenvalues, nil
+	}
+	s := newSystem(p.model, p.State, p.Parameters, -1)
+	jac := make([]float64, s.n*s.n)
+	if err := s.diff.Jacobian(p.State, p.Parameters, -1, jac); err != nil {
+		return nil, fmt.Errorf("Spectrum: %w", err)
+	}
+	var e linalg.Eigen
+	return e.Values(jac, s.n)
 }
 
 // With returns the steady state that Newton's method finds from this one when a

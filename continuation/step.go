@@ -202,6 +202,12 @@ func (t *tracer) accept(a *node, chain []*node) {
 		return // the start lies on the bound that the step would leave by
 	}
 	b := chain[len(chain)-1]
+	if last := len(t.nodes) - 2; last >= 0 {
+		t.nodes[last].fx = nil // only the two neighbours of a step need it
+	}
+	for _, c := range chain[:len(chain)-1] {
+		c.fx = nil
+	}
 	t.nodes = append(t.nodes, chain...)
 	t.steps++
 	turn := math.Acos(math.Max(-1, math.Min(1, dot(a.t, b.t))))

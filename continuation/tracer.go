@@ -18,8 +18,10 @@ type node struct {
 	k      []float64 // curvature d²z/ds²; nil where it could not be had
 	det    int       // sign of det [F_z; tᵀ]
 
-	eigenvalues []complex128
+	eigenvalues []complex128 // nil where the count was proved without them
 	unstable    int
+	proof       int       // number of the certificate that holds here, 0 for none
+	fx          []float64 // f_x in scaled states; kept for the latest nodes only
 
 	step, arc  float64
 	iterations int
@@ -32,17 +34,17 @@ type node struct {
 // so the length of z weighs the states by their mean square, and a large system
 // steps like a small one.
 type tracer struct {
-	s     *system
-	plan  *plan
-	n     int
-	S     []float64 // n+1 scales
-	rows  []float64 // n sizes of the equations by which they are scaled just now
-	known []float64 // sizes of states learnt from an earlier run, 0 for none
-	most  []float64 // the largest sizes of the equations met so far
-	jac   []float64 // n x (n+1), the last Jacobian, in the user's units
-	f     []float64
-	lu    linalg.LU
-	eig   linalg.Eigen
+	s      *system
+	plan   *plan
+	n      int
+	S      []float64 // n+1 scales
+	rows   []float64 // n sizes of the equations by which they are scaled just now
+	known  []float64 // sizes of states learnt from an earlier run, 0 for none
+	most   []float64 // the largest sizes of the equations met so far
+	jac    []float64 // n x (n+1), the last Jacobian, in the user's units
+	f      []float64
+	lu     linalg.LU
+	stable stability
 
 	tolerance float64 // of the corrector just now
 
@@ -163,7 +165,8 @@ func (t *tracer) grow(a *node) {
 	}
 	var length float64
 	a.t, length = t.inScales(a)
-	a.k, a.scales = nil, t.S
+	a.k, a.scales, a.fx, a.proof = nil, t.S, nil, 0
+	t.stable.forget()
 	t.ds = math.Max(t.ds*length, t.plan.least)
 }
 
@@ -399,28 +402,6 @@ func (t *tracer) bend(a *node, d []float64) ([]float64, error) {
 	}
 	t.lu.Solve(k)
 	return k, nil
-}
-
-// spectrum sets the eigenvalues of f_x and the count of unstable ones.
-func (t *tracer) spectrum(a *node) error {
-	a.unstable = -1
-	if !t.plan.eigenvalues {
-		return nil
-	}
-	fx := make([]float64, t.n*t.n)
-	for i := range t.n {
-		for k := range t.n {
-			// A similar matrix in scaled states: the same eigenvalues, fewer
-			// roundings.
-			fx[i*t.n+k] = t.jac[i*(t.n+1)+k] * t.S[k] / t.S[i]
-		}
-	}
-	values, err := t.eig.Values(fx, t.n)
-	if err != nil {
-		return &refusal{reason: err.Error()}
-	}
-	a.eigenvalues, a.unstable = values, countUnstable(values)
-	return nil
 }
 
 // fresh returns an empty node.

@@ -31,12 +31,18 @@ func (e *Eigen) Values(a []float64, n int) ([]complex128, error) {
 	if first > 0 {
 		return nil, errEigen
 	}
-	values := make([]complex128, n)
+	return sorted(e.re[:n], e.im[:n]), nil
+}
+
+// sorted joins real and imaginary parts, by falling real part; of a pair the one
+// with positive imaginary part first.
+func sorted(re, im []float64) []complex128 {
+	values := make([]complex128, len(re))
 	for i := range values {
-		values[i] = complex(e.re[i], e.im[i])
+		values[i] = complex(re[i], im[i])
 	}
 	slices.SortStableFunc(values, func(a, b complex128) int {
 		return cmp.Or(cmp.Compare(real(b), real(a)), cmp.Compare(imag(b), imag(a)))
 	})
-	return values, nil
+	return values
 }
