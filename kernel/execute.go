@@ -9,8 +9,10 @@ import (
 	"slices"
 	"strings"
 	"time"
+	"unicode/utf8"
 
 	"brinkline/display"
+	"brinkline/kernel/internal/help"
 	"brinkline/kernel/session"
 	"brinkline/kernel/wire"
 )
@@ -65,7 +67,7 @@ func (k *kernel) execute(ctx context.Context, m *wire.Message) content {
 	if !r.Silent {
 		k.publish(m, "execute_input", content{"code": r.Code, "execution_count": number})
 	}
-	result := k.runCell(ctx, session.Cell{ID: r.cell, Number: number, Source: r.Code}, out)
+	result, page := k.runOrHelp(ctx, session.Cell{ID: r.cell, Number: number, Source: r.Code}, out)
 	reply := content{}
 	if result.Err == nil {
 		out.result(result.Value)
@@ -81,8 +83,23 @@ func (k *kernel) execute(ctx context.Context, m *wire.Message) content {
 	if r.counts() {
 		k.history.setOutput(number, plainText(result.Value))
 	}
-	reply["execution_count"], reply["payload"] = number, []any{}
+	reply["execution_count"], reply["payload"] = number, page
 	return reply
+}
+
+// runOrHelp runs a cell or, when it asks for help on a name, returns what the
+// front end shows in its pager.
+func (k *kernel) runOrHelp(ctx context.Context, c session.Cell, out session.Output) (res session.Result, page []any) {
+	name, ok := help.On(c.Source)
+	if !ok {
+		return k.runCell(ctx, c, out), []any{}
+	}
+	b, found := k.executor.Inspect(name, utf8.RuneCountInString(name))
+	if !found {
+		res.Err = &session.Error{Name: "NameError", Message: "nothing is known of " + name}
+		return res, []any{}
+	}
+	return res, []any{content{"source": "page", "data": object(b.Data), "start": 0}}
 }
 
 // runCell runs a cell; a fault of the executor becomes an error of the cell.

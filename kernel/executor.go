@@ -7,12 +7,6 @@ import (
 	"brinkline/kernel/session"
 )
 
-// Completion is what may stand in the place of the runes from Start to End.
-type Completion struct {
-	Matches    []string
-	Start, End int
-}
-
 // Executor runs cells and knows the names in them. Run is called for one cell
 // at a time; the other methods may be called while it runs.
 type Executor interface {
@@ -21,7 +15,7 @@ type Executor interface {
 	Run(ctx context.Context, c session.Cell, out session.Output) session.Result
 
 	// Complete returns what may stand around the cursor, counted in runes.
-	Complete(source string, cursor int) Completion
+	Complete(source string, cursor int) session.Completion
 
 	// IsComplete returns "complete", "incomplete" with the indent of the next
 	// line, "invalid" or "unknown".
@@ -34,14 +28,4 @@ type Executor interface {
 }
 
 // newSession starts the executor of real cells.
-func newSession() (Executor, error) {
-	s, err := session.New(session.Options{})
-	return interim{s}, err
-}
-
-// interim stands in for what the session does not answer yet.
-type interim struct{ *session.Session }
-
-func (interim) Complete(string, int) Completion            { return Completion{} }
-func (interim) IsComplete(string) (string, string)         { return "unknown", "" }
-func (interim) Inspect(string, int) (display.Bundle, bool) { return display.Bundle{}, false }
+func newSession() (Executor, error) { return session.New(session.Options{}) }

@@ -128,13 +128,13 @@ func (*fake) Run(ctx context.Context, c session.Cell, out session.Output) (res s
 	return res
 }
 
-func (*fake) Complete(source string, cursor int) Completion {
+func (*fake) Complete(source string, cursor int) session.Completion {
 	runes := []rune(source)[:cursor]
 	start := len(runes)
 	for start > 0 && runes[start-1] != ' ' && runes[start-1] != '\n' {
 		start--
 	}
-	c := Completion{Start: start, End: cursor}
+	c := session.Completion{Start: start, End: cursor}
 	for _, verb := range []string{"display", "displays"} {
 		if strings.HasPrefix(verb, string(runes[start:])) {
 			c.Matches = append(c.Matches, verb)

@@ -357,3 +357,17 @@ func TestRequestsOfAnotherForm(t *testing.T) {
 		t.Errorf("%v", r.Content)
 	}
 }
+
+func TestHelpGoesToThePager(t *testing.T) {
+	c := ready(t)
+	for _, code := range []string{"?out", "out?", " out? \n"} {
+		r, published := c.Execute(code)
+		if got := fmt.Sprint(r.Content["payload"]); got != "[map[data:map[text/plain:verb out, cursor at 3] source:page start:0]]" {
+			t.Errorf("%q: payload %s", code, got)
+		}
+		expect(t, published, "busy", "execute_input", "idle")
+	}
+	if r, _ := c.Execute("nothing?"); r.Text("evalue") != "nothing is known of nothing" {
+		t.Errorf("%v", r.Content)
+	}
+}
