@@ -42,6 +42,7 @@ type lowerer struct {
 	used    map[string]int
 	results []types.Type
 	named   []*types.Var // named results
+	clear   []ast.Stmt   // sets the named results to zero
 	loops   int          // around the statement being lowered
 	quiet   bool         // library source: no positions
 }
@@ -230,7 +231,7 @@ func (l *lowerer) signature(sig *types.Signature, params *ast.FieldList, in, out
 		params.List = append(params.List, l.param(v, sig.Params().At(i).Type(), sig.Variadic() && i == sig.Params().Len()-1))
 	}
 	results := &ast.FieldList{}
-	l.results, l.named = nil, nil
+	l.results, l.named, l.clear = nil, nil, nil
 	hasNames := false
 	for _, v := range out {
 		hasNames = hasNames || v != nil
@@ -245,6 +246,7 @@ func (l *lowerer) signature(sig *types.Signature, params *ast.FieldList, in, out
 				name = l.declare(out[i])
 			}
 			l.named = append(l.named, out[i])
+			l.clear = append(l.clear, varStmt(name+mark+"0", l.typ(t), nil), assign(ast.NewIdent(name), ast.NewIdent(name+mark+"0")))
 			f.Names = []*ast.Ident{ast.NewIdent(name)}
 		}
 		results.List = append(results.List, f)
@@ -268,9 +270,12 @@ func (l *lowerer) param(v *types.Var, t types.Type, variadic bool) *ast.Field {
 	return &ast.Field{Names: []*ast.Ident{ast.NewIdent(name)}, Type: e}
 }
 
-// funcBody lowers the body of a function and guards its depth.
+// funcBody lowers the body of a function and guards its depth. Named results are cleared first: where the call stands in a loop, the
+// interpreter hands the function the values of the last turn.
 func (l *lowerer) funcBody(body *ast.BlockStmt, name string) *ast.BlockStmt {
+	clear := l.clear
 	b := l.block(body)
+	b.List = append(clear, b.List...)
 	if !l.quiet && callsBack(body) {
 		b.List = append(depthGuard(), b.List...)
 	}
