@@ -26,26 +26,28 @@ func (p *progress) step(s notebook.Step) {
 		fmt.Fprintf(p.w, "%3d of %d  %s", s.Number, s.Of, shortened(s.Cell.Caption(), captionWidth))
 		return
 	}
-	fmt.Fprintln(p.w, outcome(s.Err, time.Since(p.began)))
-	if s.Err != nil {
+	fmt.Fprintln(p.w, outcome(s, time.Since(p.began)))
+	if s.Stops() {
 		fmt.Fprint(p.w, place(s.Cell.Source(), s.Err))
 	}
 }
 
 // outcome says how a cell ended, and how long it took where that is worth a
 // word.
-func outcome(err *session.Error, took time.Duration) string {
+func outcome(s notebook.Step, took time.Duration) string {
 	said := ""
 	if took >= 100*time.Millisecond {
 		said = fmt.Sprintf("  %.1f s", took.Seconds())
 	}
 	switch {
-	case err == nil:
+	case s.Err == nil:
 		return said
-	case err.Interrupted:
+	case s.Err.Interrupted:
 		return said + "  interrupted"
-	default:
+	case s.Stops():
 		return said + "  error"
+	default:
+		return said + "  error, as expected"
 	}
 }
 

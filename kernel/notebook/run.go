@@ -27,6 +27,12 @@ type Step struct {
 	Err    *session.Error // what stopped the cell, or nil
 }
 
+// Stops reports whether the cell's error ends the run: an interrupt does, and
+// any other error unless the cell is tagged raises-exception.
+func (s Step) Stops() bool {
+	return s.Err != nil && (s.Err.Interrupted || !s.Cell.Tagged("raises-exception"))
+}
+
 // A CellError says which cell stopped a run, and why.
 type CellError struct {
 	Number int    // the cell's execution count
@@ -84,7 +90,7 @@ func Run(ctx context.Context, nb *Notebook, ex Executor, progress func(Step)) er
 		step.Err = runCell(ctx, cell, step.Number, ex, out)
 		step.Done = true
 		progress(step)
-		if step.Err != nil && (step.Err.Interrupted || !cell.Tagged("raises-exception")) {
+		if step.Stops() {
 			return &CellError{step.Number, cell.ID(), cell.Source(), step.Err}
 		}
 	}
