@@ -80,28 +80,25 @@ func (f *Figure) named(name string) (side, error) {
 
 // slope returns the derivative of what stands on the axis by the arclength of
 // the branch, NaN where only differences would give it.
-func (s side) slope(p *continuation.Point) float64 {
-	m := p.Model()
-	name := s.variable.Name
-	if name == "" || len(p.Tangent) != len(p.State)+1 {
+func (s side) slope(p *continuation.Point) float64 { return s.entry(p, p.Tangent) }
+
+// entry returns the component of a direction (states, then the followed parameter)
+// that belongs to the axis: 0 for a parameter that is held, NaN for a function.
+func (s side) entry(p *continuation.Point, direction []float64) float64 {
+	name, n := s.variable.Name, len(p.State)
+	if name == "" || len(direction) != n+1 {
 		return math.NaN()
 	}
 	if name == p.Parameter {
-		return p.Tangent[len(p.State)]
+		return direction[n]
 	}
-	return s.component(m, p.Tangent)
-}
-
-// component returns the entry of a direction in state space (or state and
-// parameter space) that belongs to the axis: 0 for a parameter that is held.
-func (s side) component(m *continuation.Model, direction []float64) float64 {
-	for i, v := range m.States() {
-		if v.Name == s.variable.Name {
+	for i, v := range p.Model().States() {
+		if v.Name == name {
 			return direction[i]
 		}
 	}
-	for _, q := range m.Parameters() {
-		if q.Name == s.variable.Name {
+	for _, q := range p.Model().Parameters() {
+		if q.Name == name {
 			return 0
 		}
 	}

@@ -3,6 +3,7 @@ package display
 import (
 	"fmt"
 	"math"
+	"strings"
 
 	"brinkline/continuation"
 )
@@ -99,20 +100,64 @@ func normalisation(weak bool) string {
 // branchPointCard shows a simple stationary bifurcation.
 func branchPointCard(b *continuation.BranchPoint) *Grid {
 	g := specialCard(b, b.Right, b.Left, b.Uncertainty)
+	if name := b.Name(); name != "" {
+		g.say("name", name)
+	}
+	g.say("meaning", b.Meaning())
 	g.say("range test", fmt.Sprintf("wᵀ f_λ = %s, 0 up to rounding: f_λ lies in the range of f_x, so two branches cross here; relative to its natural size %s",
 		significant(b.RangeTest, 2), significant(b.RangeRelative, 2)))
+	if b.Tangents[0] != nil {
+		g.say("reduced equation", reducedText(b))
+	}
 	g.note(normalisation(false))
 	g.note(caution)
 	return g
 }
 
+// reducedText writes the equation of both branches to leading order.
+func reducedText(b *continuation.BranchPoint) string {
+	var out strings.Builder
+	for _, term := range []struct {
+		factor float64
+		power  string
+	}{{b.Quadratic, "s²"}, {b.Mixed, "s m"}, {b.ParameterQuadratic, "m²"}, {b.Cubic, "s³"}} {
+		switch {
+		case term.factor == 0:
+			continue
+		case out.Len() > 0:
+			out.WriteString(" " + sign(term.factor) + " ")
+		case term.factor < 0:
+			out.WriteString("-")
+		}
+		out.WriteString(significant(math.Abs(term.factor), vectorDigits) + " " + term.power)
+	}
+	return fmt.Sprintf("%s = 0 for m = %s - %s, x - x* ≈ s v", &out, b.Parameter().Name, valueText(b, 6))
+}
+
 // hopfCard shows a Hopf point.
 func hopfCard(h *continuation.Hopf) *Grid {
 	g := specialCard(h, nil, nil, h.Uncertainty)
+	g.say("meaning", h.Meaning())
 	g.say("pair", fmt.Sprintf("± %s i, the eigenvalues that cross the imaginary axis (radians per unit of time)", significant(h.Omega, stateDigits)))
 	g.say("period", significant(h.Period, stateDigits)+" units of time, of small oscillations")
+	if !math.IsNaN(h.Lyapunov) {
+		g.say("first Lyapunov coefficient", fmt.Sprintf("%s for |q| = 1 in the units shown and <p, q> = 1", significant(h.Lyapunov, vectorDigits)))
+	}
 	g.note(caution)
 	return g
+}
+
+// multipleCard shows a point with several null vectors.
+func multipleCard(m *continuation.Multiple) *Grid {
+	g := specialCard(m, nil, nil, m.Uncertainty)
+	g.say("null space of f_x", fmt.Sprintf("%d dimensions: more than two branches may meet here", m.Dimension))
+	g.note(caution)
+	return g
+}
+
+// eventCard shows a point that the analyst asked for.
+func eventCard(e *continuation.Event) *Grid {
+	return specialCard(e, nil, nil, e.Uncertainty)
 }
 
 // marginCard shows how far it is to a limit.

@@ -115,13 +115,15 @@ func (s *sheet) marks(list []mark) []spot {
 			continue
 		}
 		u := unit(s.direction(m.place, m.dx, m.dy))
-		switch m.kind {
-		case "fold":
+		switch m.shape {
+		case foldShape:
 			s.fold(&sp, u)
-		case "simple stationary bifurcation":
+		case crossingShape:
 			s.crossing(&sp, u)
-		case "Hopf point":
+		case ringShape:
 			s.ring(&sp, u)
+		case tickShape:
+			s.tick(&sp, u)
 		default:
 			s.dot(&sp)
 		}
@@ -131,7 +133,7 @@ func (s *sheet) marks(list []mark) []spot {
 }
 
 func rank(m mark) int {
-	if m.kind == "" && m.label == "" {
+	if m.shape == dotShape && m.label == "" {
 		return 0
 	}
 	return 1
@@ -176,14 +178,15 @@ func (s *sheet) fold(sp *spot, u vg.Point) {
 	}
 }
 
-// crossing draws the branch's tangent and, across it, the null vector of f_x. A
-// null vector that lies along the branch or is not seen in this picture gives way
-// to the normal.
+// crossing draws the tangents of both branches. One that is not known, or that
+// cannot be told from the other in this picture, gives way to the normal.
 func (s *sheet) crossing(sp *spot, u vg.Point) {
 	const half = 8
-	v := unit(s.direction(sp.place, sp.vx, sp.vy))
-	known := !math.IsNaN(sp.vx) && !math.IsNaN(sp.vy) && (sp.vx != 0 || sp.vy != 0)
-	if !known || math.Abs(float64(u.X*v.Y-u.Y*v.X)) < 0.2 {
+	v := normal(u)
+	if a, b := s.tangent(sp, 0), s.tangent(sp, 1); a != (vg.Point{}) && b != (vg.Point{}) {
+		u, v = a, b
+	}
+	if math.Abs(float64(u.X*v.Y-u.Y*v.X)) < 0.2 {
 		v = normal(u)
 	}
 	style := draw.LineStyle{Color: ink, Width: 2.25}
@@ -191,6 +194,26 @@ func (s *sheet) crossing(sp *spot, u vg.Point) {
 		s.bar(style, sp.centre, d, half)
 	}
 	sp.prefer = along(unit(vg.Point{X: u.X + v.X, Y: u.Y + v.Y}), vg.Point{Y: 1}, 0.5)
+}
+
+// tangent returns the direction of one branch at a crossing on the canvas, zero
+// when it is unknown or cannot be seen.
+func (s *sheet) tangent(sp *spot, which int) vg.Point {
+	t := sp.tangents[which]
+	d := s.direction(sp.place, t.dx, t.dy)
+	if n := math.Hypot(float64(d.X), float64(d.Y)); !(n > 1e-9) || math.IsInf(n, 0) {
+		return vg.Point{}
+	}
+	return unit(d)
+}
+
+// tick draws a short line across the branch.
+func (s *sheet) tick(sp *spot, u vg.Point) {
+	s.bar(draw.LineStyle{Color: ink, Width: 1.2}, sp.centre, normal(u), 5)
+	sp.prefer = along(vg.Point{}, normal(u), 1)
+	if sp.prefer.Y < 0 {
+		sp.prefer = along(vg.Point{}, normal(u), -1)
+	}
 }
 
 // ring draws a small ring with a tick along the normal of the branch.

@@ -181,6 +181,17 @@ func TestFoldsThatAreClose(t *testing.T) {
 	}
 }
 
+// TestOnePointOnTwoBranches labels the crossing that both branches found once.
+func TestOnePointOnTwoBranches(t *testing.T) {
+	doc := new(bytes.Buffer)
+	if err := Plot(transcritical(t)).WriteSVG(doc); err != nil {
+		t.Fatal(err)
+	}
+	if n := strings.Count(doc.String(), ">transcritical bifurcation 1 N<"); n != 1 {
+		t.Errorf("%d labels", n)
+	}
+}
+
 func TestBranchesAreToldApart(t *testing.T) {
 	a, b := lakeBranch(t, 0.7), lakeBranch(t, 1)
 	for _, c := range []struct {
@@ -260,5 +271,58 @@ func TestUnitsMustAgree(t *testing.T) {
 	err := Plot(tankBranch(t), other).Y("Temperature").Err()
 	if err == nil || !strings.Contains(err.Error(), "cannot share an axis") {
 		t.Errorf("%v", err)
+	}
+}
+
+// TestTangentsAtCrossings compares the crossing's strokes with the tangents known
+// by hand: at the pitchfork of the strut along the load and across it, at the
+// transcritical point of x(1 - x - p) along x = 0 and x = 1 - p.
+func TestTangentsAtCrossings(t *testing.T) {
+	for _, c := range []struct {
+		branch *continuation.Branch
+		slopes [2]float64 // dx/dp, infinite across the parameter
+		label  string
+	}{
+		{strutBranch(t), [2]float64{0, math.Inf(1)}, "supercritical pitchfork 12 kN"},
+		{transcritical(t)[1], [2]float64{0, -1}, "transcritical bifurcation 1 N"},
+	} {
+		s, err := Plot(c.branch).scene()
+		if err != nil {
+			t.Fatal(err)
+		}
+		m := s.marks[0]
+		if m.shape != crossingShape || m.label != c.label {
+			t.Errorf("shape %d, label %q, want %q", m.shape, m.label, c.label)
+		}
+		for _, want := range c.slopes {
+			near := false
+			for _, d := range m.tangents {
+				if math.IsInf(want, 0) {
+					near = near || math.Abs(d.dx) < 1e-6*math.Abs(d.dy)
+				} else {
+					near = near || math.Abs(d.dy-want*d.dx) < 1e-6*math.Hypot(d.dx, d.dy)
+				}
+			}
+			if !near {
+				t.Errorf("%s: no tangent of slope %g in %v", c.label, want, m.tangents)
+			}
+		}
+	}
+}
+
+func TestEventsAreMarked(t *testing.T) {
+	b := hotTank(t)
+	var doc bytes.Buffer
+	if err := Plot(b).WriteSVG(&doc); err != nil {
+		t.Fatal(err)
+	}
+	if n := strings.Count(doc.String(), ">too hot 31"); n != 1 {
+		t.Errorf("%d labels of the event", n)
+	}
+	for _, v := range []any{Table(b), b.Events(), b.Events()[0]} {
+		text := Render(v).Text()
+		if !strings.Contains(strings.ToLower(text), "too hot") || strings.Contains(text, "not computed") {
+			t.Errorf("%T:\n%s", v, text)
+		}
 	}
 }

@@ -51,6 +51,14 @@ func gallery(t testing.TB) map[string]*Figure {
 		return 3 * (p.State[1] - p.Parameters[1])
 	}).Size(8.5, 6)
 	figures["plane"] = Plot(path, path.Folds()).X("Conversion").Y("Temperature")
+	figures["crossing"] = Plot(transcritical(t))
+	trivial := strutBranch(t)
+	bent, err := trivial.BranchPoints()[0].Leave(continuation.Within(0, 20))
+	if err != nil {
+		t.Fatal(err)
+	}
+	figures["pitchfork"] = Plot(trivial, bent).Label("straight", "bent")
+	figures["event"] = Plot(hotTank(t)).Y("Temperature")
 	figures["isola"] = branchFigure(isola(t))
 	figures["points"] = Plot(path.Points(), path.Folds())
 	if fold, err := path.LimitAbove(start); err == nil {
@@ -106,4 +114,20 @@ func isola(t testing.TB) *continuation.Branch {
 	}
 	m := newModel(t, f, oneParams{Push: 0}, continuation.Named("isola"))
 	return follow(t, settle(t, m, oneState{0.8}), "Push", continuation.Within(-5, 5))
+}
+
+// transcritical is a population that is harvested: extinction and survival cross.
+func transcritical(t testing.TB) []*continuation.Branch {
+	f := func(s oneState, q oneParams) oneState { return oneState{s.X * (1 - s.X - q.Push)} }
+	m := newModel(t, f, oneParams{Push: 0}, continuation.Named("stock"))
+	return []*continuation.Branch{
+		follow(t, settle(t, m, oneState{1}), "Push", continuation.Within(0, 2)),
+		follow(t, settle(t, m, oneState{0}), "Push", continuation.Within(0, 2)),
+	}
+}
+
+// hotTank marks where the tank reaches 350 K.
+func hotTank(t testing.TB) *continuation.Branch {
+	hot := func(p *continuation.Point) float64 { return p.State[1] - 390 }
+	return follow(t, tankStart(t), "Coolant", continuation.Within(280, 320), continuation.Mark("too hot", hot))
 }

@@ -46,6 +46,10 @@ func (f *Figure) add(v any) error {
 		return f.put(v != nil, "simple stationary bifurcation", item{special: v})
 	case *continuation.Hopf:
 		return f.put(v != nil, "Hopf point", item{special: v})
+	case *continuation.Multiple:
+		return f.put(v != nil, "multiple bifurcation", item{special: v})
+	case *continuation.Event:
+		return f.put(v != nil, "event", item{special: v})
 	case *continuation.Margin:
 		return f.put(v != nil, "margin", item{margin: v})
 	}
@@ -63,10 +67,19 @@ func (f *Figure) put(ok bool, what string, it item) error {
 // brancher is what can give its branch, such as a walk.
 type brancher interface{ Branch() *continuation.Branch }
 
+// surveyed is what found steady states and can say how hard it looked.
+type surveyed interface {
+	Points() []*continuation.Point
+	Statement() string
+}
+
 // addOther takes slices of what can be drawn, and what has a branch.
 func (f *Figure) addOther(v any) error {
 	if b, ok := v.(brancher); ok && !isNil(v) {
 		return f.add(b.Branch())
+	}
+	if s, ok := v.(surveyed); ok && !isNil(v) {
+		return f.addOther(s.Points())
 	}
 	list := reflect.ValueOf(v)
 	if list.Kind() != reflect.Slice && list.Kind() != reflect.Array {

@@ -3,6 +3,7 @@ package display
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"brinkline/continuation"
 )
@@ -36,15 +37,38 @@ func (s *scene) put(m mark) {
 
 func (s *scene) specialMark(special continuation.Special) (mark, error) {
 	p, err := s.place(special.Where())
-	m := mark{place: p, kind: special.Kind(), vx: math.NaN(), vy: math.NaN()}
+	m := mark{place: p, shape: tickShape}
 	switch special := special.(type) {
 	case *continuation.Fold:
-		m.away = s.turn(special)
+		m.shape, m.away = foldShape, s.turn(special)
 	case *continuation.BranchPoint:
-		model := special.Where().Model()
-		m.vx, m.vy = s.x.component(model, special.Right), s.y.component(model, special.Right)
+		m.shape, m.tangents = crossingShape, s.tangents(special)
+	case *continuation.Multiple:
+		m.shape, m.tangents = crossingShape, [2]place{unknownTangent, unknownTangent}
+	case *continuation.Hopf:
+		m.shape = ringShape
 	}
 	return m, err
+}
+
+var unknownTangent = place{dx: math.NaN(), dy: math.NaN()}
+
+// tangents projects the tangents of both branches at a crossing. Where they could
+// not be computed they are the branch's own and the null vector of f_x.
+func (s *scene) tangents(b *continuation.BranchPoint) [2]place {
+	var out [2]place
+	for i, t := range b.Tangents {
+		out[i] = unknownTangent
+		if len(t) > 0 {
+			out[i] = place{dx: s.x.entry(b.Where(), t), dy: s.y.entry(b.Where(), t)}
+		}
+	}
+	if b.Tangents[0] == nil {
+		null := append(slices.Clone(b.Right), 0)
+		out[0] = place{dx: s.x.slope(b.Where()), dy: s.y.slope(b.Where())}
+		out[1] = place{dx: s.x.entry(b.Where(), null), dy: s.y.entry(b.Where(), null)}
+	}
+	return out
 }
 
 // turn says to which side of a fold the branch bends when the followed parameter
@@ -74,6 +98,9 @@ func (f *Figure) specialLabels(specials []continuation.Special) []string {
 			continue
 		}
 		digits := apart(specials, group)
+		if digits == 0 { // one point on several branches
+			continue
+		}
 		for _, i := range group {
 			s := specials[i]
 			labels[i] = f.specialLabel(s, reliable(s.Where().Value(), min(digits, s.Digits())))
@@ -82,19 +109,27 @@ func (f *Figure) specialLabels(specials []continuation.Special) []string {
 	return labels
 }
 
-// apart returns how many digits tell the values of special points apart.
+// apart returns how many digits tell the values of special points apart, as far as
+// that can be; 0 when all are the same.
 func apart(specials []continuation.Special, group []int) int {
 	const most = 10
-	for digits := 6; digits < most; digits++ {
+	different := func(digits int) int {
 		seen := map[string]bool{}
 		for _, i := range group {
-			seen[reliable(specials[i].Where().Value(), digits)] = true
+			s := specials[i]
+			seen[reliable(s.Where().Value(), min(digits, s.Digits()))] = true
 		}
-		if len(seen) == len(group) {
-			return digits + 1
+		return len(seen)
+	}
+	all := different(most)
+	if all == 1 {
+		return 0
+	}
+	for digits := 6; ; digits++ {
+		if different(digits) == all {
+			return min(digits+1, most)
 		}
 	}
-	return most
 }
 
 func (f *Figure) specialLabel(s continuation.Special, number string) string {
@@ -103,7 +138,15 @@ func (f *Figure) specialLabel(s continuation.Special, number string) string {
 	if v.Name != f.xName() {
 		number = "at " + v.Name + " " + number
 	}
-	return s.Kind() + " " + withUnit(number, v.Unit)
+	return term(s) + " " + withUnit(number, v.Unit)
+}
+
+// term names a special point in a picture, as closely as it is known.
+func term(s continuation.Special) string {
+	if b, ok := s.(*continuation.BranchPoint); ok && b.Name() != "" {
+		return b.Name()
+	}
+	return s.Kind()
 }
 
 // addPoint adds the dot of a steady state, or of the two ends of a margin.

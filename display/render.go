@@ -83,8 +83,17 @@ func card(v any) *Grid {
 		return marginCard(v)
 	case *continuation.Sensitivities:
 		return sensitivitiesTable(v)
-	case []*continuation.Fold, []*continuation.BranchPoint, []*continuation.Hopf, []continuation.Special, []*continuation.Point:
+	case *continuation.Multiple:
+		return multipleCard(v)
+	case *continuation.Event:
+		return eventCard(v)
+	case surveyed:
+		return surveyTable(v)
+	case []*continuation.Point:
 		return Table(v)
+	}
+	if list, ok := specialsIn(v); ok {
+		return specialsTable(list)
 	}
 	return nil
 }

@@ -143,8 +143,8 @@ func TestCards(t *testing.T) {
 		"balance":       {feederBranch(t).Model(), []string{"without time", "nothing is called stable"}},
 		"point":         {start, []string{"Steady state of tank at Coolant 300 K", "326.678", "stable: both eigenvalues", "-0.8526 ± 0.5603 i"}},
 		"balance point": {feederBranch(t).Points()[3], []string{"not called stable or unstable"}},
-		"Hopf":          {path.HopfPoints()[0], []string{"303.094", "period", caution}},
-		"bifurcation":   {strutBranch(t).BranchPoints()[0], []string{"Simple stationary bifurcation of strut", "0 up to rounding", "two branches cross here"}},
+		"Hopf":          {path.HopfPoints()[0], []string{"303.094", "period", "loss of stability", "first Lyapunov coefficient", caution}},
+		"bifurcation":   {strutBranch(t).BranchPoints()[0], []string{"Simple stationary bifurcation of strut", "supercritical pitchfork", "0 up to rounding", "two branches cross here", "1 s m - 0.3 s³ = 0 for m = Load - 12"}},
 		"margin":        {margin, []string{"1.78291 K", "0.5943 %", "up:", caution}},
 		"sensitivities": {sens, []string{"Feed", "K per L/min", "percent per percent"}},
 		"special":       {Table(path), []string{"Coolant (K)", "301.7829132", "unstable (1)", "stable", "digits", "left the range"}},
@@ -239,6 +239,39 @@ func TestProgress(t *testing.T) {
 	for _, p := range []continuation.Progress{{Task: "Settle"}, {Task: "Follow", Fraction: 7, Value: math.NaN()}} {
 		if text := Render(p).Text(); !strings.HasPrefix(text, p.Task+": 0 steps") {
 			t.Errorf("%q", text)
+		}
+	}
+}
+
+// found stands for the result of a survey.
+type found []*continuation.Point
+
+func (f found) Points() []*continuation.Point { return f }
+func (f found) Statement() string             { return "64 starts, the last 40 found nothing new" }
+
+func TestSurveys(t *testing.T) {
+	points := tankBranch(t).Points()
+	v := found{points[0], points[40]}
+	b := Render(v)
+	for _, want := range []string{"Steady states found", "305.039", "64 starts, the last 40 found nothing new."} {
+		if !strings.Contains(b.Text(), want) {
+			t.Errorf("%q is not in\n%s", want, b.Text())
+		}
+	}
+	if err := Plot(v).Err(); err != nil {
+		t.Error(err)
+	}
+	if text := Render(found{}).Text(); !strings.Contains(text, "none") {
+		t.Errorf("%s", text)
+	}
+}
+
+func TestGroupShowsAll(t *testing.T) {
+	b := Render(Group{Plot(tankBranch(t)), Table([]float64{1}), "a < b"})
+	page := b.Data[MIMEHTML].(string)
+	for _, want := range []string{"<svg", "<table", "<pre>a &lt; b</pre>"} {
+		if !strings.Contains(page, want) {
+			t.Errorf("%s is missing", want)
 		}
 	}
 }

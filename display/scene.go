@@ -50,11 +50,22 @@ func (p place) finite() bool {
 // A mark is a special point or a steady state.
 type mark struct {
 	place
-	kind   string  // of a special point, empty for a steady state
-	vx, vy float64 // null vector at a stationary bifurcation
-	away   float64 // -1 where the curve turns to smaller x, +1 to greater, 0 else
-	label  string
+	shape    shape
+	tangents [2]place // dx, dy of both branches at a crossing, NaN where unknown
+	away     float64  // -1 where the curve turns to smaller x, +1 to greater, 0 else
+	label    string
 }
+
+// A shape is what a mark looks like: the local geometry it stands for.
+type shape int
+
+const (
+	dotShape      shape = iota // a steady state
+	foldShape                  // a bar along the tangent at the turn
+	crossingShape              // two tangents
+	ringShape                  // a ring with a tick: a Hopf point
+	tickShape                  // a tick across the branch: an event
+)
 
 // A span is a margin: an arrow from a steady state to a limit.
 type span struct {

@@ -63,12 +63,11 @@ func switchScene(n int) *scene {
 	part(-1.3, -turn, solid)
 	part(-turn, turn, dashed)
 	part(turn, 1.3, solid)
-	nan := math.NaN()
 	s.marks = []mark{
-		{place: at(-turn), kind: "fold", away: 1, vx: nan, vy: nan, label: "fold −0.3849 N"},
-		{place: at(turn), kind: "fold", away: -1, vx: nan, vy: nan, label: "fold 0.3849 N"},
-		{place: at(0), kind: "simple stationary bifurcation", vx: 0, vy: 1, label: "simple stationary bifurcation 0 N"},
-		{place: at(1), kind: "Hopf point", vx: nan, vy: nan, label: "Hopf point 0 N"},
+		{place: at(-turn), shape: foldShape, away: 1, label: "fold −0.3849 N"},
+		{place: at(turn), shape: foldShape, away: -1, label: "fold 0.3849 N"},
+		{place: at(0), shape: crossingShape, tangents: [2]place{{dx: 1, dy: 1}, {dy: 1}}, label: "simple stationary bifurcation 0 N"},
+		{place: at(1), shape: ringShape, label: "Hopf point 0 N"},
 		{place: at(-1.1), label: "now 0.231 N"},
 	}
 	s.spans = []span{{from: at(-1.1), to: at(turn), label: "margin 0.154 N"}}
@@ -254,14 +253,14 @@ func TestLabelsCollideWithNothing(t *testing.T) {
 
 func randomScene(t *rapid.T) *scene {
 	s := &scene{x: side{label: "Push (N)"}, y: side{label: "Angle"}}
-	kinds := []string{"fold", "simple stationary bifurcation", "Hopf point", ""}
+	words := map[shape]string{foldShape: "fold", crossingShape: "simple stationary bifurcation", ringShape: "Hopf point", tickShape: "too hot", dotShape: "now"}
 	nan := math.NaN()
 	for i := range rapid.IntRange(1, 5).Draw(t, "curves") {
 		c := curve{ink: inks[i]}
 		if rapid.Bool().Draw(t, "named") {
 			c.label = fmt.Sprintf("branch %d", i+1)
 		}
-		a, b, k := shape(t), shape(t), 1+5*math.Abs(shape(t))
+		a, b, k := coefficient(t), coefficient(t), 1+5*math.Abs(coefficient(t))
 		var r run
 		for j := range 60 {
 			u := float64(j) / 59
@@ -271,9 +270,9 @@ func randomScene(t *rapid.T) *scene {
 		s.curves = append(s.curves, c)
 		for range rapid.IntRange(0, 3).Draw(t, "marks") {
 			p := r.places[rapid.IntRange(0, 59).Draw(t, "at")]
-			kind := rapid.SampledFrom(kinds).Draw(t, "kind")
-			m := mark{place: p, kind: kind, vx: nan, vy: nan, label: kind + " " + significant(p.x, 5) + " N"}
-			if kind == "fold" {
+			kind := shape(rapid.IntRange(int(dotShape), int(tickShape)).Draw(t, "shape"))
+			m := mark{place: p, shape: kind, tangents: [2]place{unknownTangent, unknownTangent}, label: words[kind] + " " + significant(p.x, 5) + " N"}
+			if kind == foldShape {
 				m.away = rapid.SampledFrom([]float64{-1, 1}).Draw(t, "away")
 			}
 			s.marks = append(s.marks, m)
@@ -282,7 +281,7 @@ func randomScene(t *rapid.T) *scene {
 	return s
 }
 
-func shape(t *rapid.T) float64 { return rapid.Float64Range(-1, 1).Draw(t, "shape") }
+func coefficient(t *rapid.T) float64 { return rapid.Float64Range(-1, 1).Draw(t, "coefficient") }
 
 // TestGlyphs checks that no text of the pictures has a rune that the font lacks.
 func TestGlyphs(t *testing.T) {

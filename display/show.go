@@ -2,6 +2,7 @@ package display
 
 import (
 	"fmt"
+	"html"
 	"io"
 	"os"
 	"strings"
@@ -29,7 +30,27 @@ func (g Group) String() string {
 	return strings.Join(parts, "\n\n")
 }
 
-func (g Group) bundle() Bundle { return plainBundle(g.String()) }
+// bundle puts the values one under the other. Its html holds pictures as SVG.
+func (g Group) bundle() Bundle {
+	if err := g.Err(); err != nil {
+		return plainBundle(err.Error())
+	}
+	b := plainBundle(g.String())
+	var page strings.Builder
+	for _, v := range g {
+		part := Render(v)
+		switch {
+		case part.Data[MIMEHTML] != nil:
+			fmt.Fprint(&page, part.Data[MIMEHTML])
+		case part.Data[MIMESVG] != nil:
+			fmt.Fprintf(&page, "<div>%s</div>\n", part.Data[MIMESVG])
+		default:
+			fmt.Fprintf(&page, "<pre>%s</pre>\n", html.EscapeString(part.Text()))
+		}
+	}
+	b.Data[MIMEHTML] = page.String()
+	return b
+}
 
 // Show prints the plain text of each value to standard output, in order. It stops
 // at the first value that is an error or carries one, such as a figure with an

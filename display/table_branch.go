@@ -37,6 +37,9 @@ func specialsTable(list []continuation.Special) *Grid {
 	cols := [][]string{make([]string, len(list))}
 	for i, s := range list {
 		cols[0][i] = s.Kind()
+		if w := term(s); w != s.Kind() {
+			cols[0][i] += " (" + w + ")"
+		}
 	}
 	put := func(head string, numeric bool, cells []string) {
 		g.columns = append(g.columns, column{head, numeric})
@@ -110,10 +113,7 @@ func where(list []continuation.Special, put putColumn) {
 }
 
 // isZero reports whether the value cannot be told from 0.
-func isZero(s continuation.Special) bool {
-	t, ok := s.(interface{ ValueText(int) string })
-	return ok && t.ValueText(3) == "0"
-}
+func isZero(s continuation.Special) bool { return s.ValueText(3) == "0" }
 
 // variableOf returns the followed parameter's name and unit.
 func variableOf(p *continuation.Point) continuation.Variable {
@@ -176,6 +176,10 @@ func around(s continuation.Special) (before, after int) {
 		return s.UnstableBefore, s.UnstableAfter
 	case *continuation.Hopf:
 		return s.UnstableBefore, s.UnstableAfter
+	case *continuation.Multiple:
+		return s.UnstableBefore, s.UnstableAfter
+	case *continuation.Event:
+		return s.UnstableBefore, s.UnstableAfter
 	}
 	return -1, -1
 }
@@ -217,8 +221,8 @@ func pointsTable(points []*continuation.Point, b *continuation.Branch) *Grid {
 	}
 	g.note(states(points, put))
 	stabilityColumn(points, put)
-	steps(points, put)
 	if b != nil {
+		steps(points, put)
 		g.caption = fmt.Sprintf("Points of %s in %s", b.Model().Name(), b.Parameter().Name)
 		put("", false, remarks(b))
 	}

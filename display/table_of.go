@@ -25,6 +25,8 @@ func Table(v any) *Grid {
 		return branchTable(v)
 	case brancher:
 		return branchTable(v.Branch())
+	case surveyed:
+		return surveyTable(v)
 	case []*continuation.Point:
 		return pointsTable(v, nil)
 	case mat.Matrix:
@@ -49,10 +51,29 @@ func Points(v any) *Grid {
 		return pointsTable(v.Points(), v)
 	case brancher:
 		return Points(v.Branch())
+	case surveyed:
+		return surveyTable(v)
 	case []*continuation.Point:
 		return pointsTable(v, nil)
 	}
 	return &Grid{err: fmt.Errorf("Points wants a branch or a slice of points, not a %T", v)}
+}
+
+// surveyTable shows the steady states that a survey found, and how hard it looked.
+func surveyTable(s surveyed) *Grid {
+	g := pointsTable(s.Points(), nil)
+	g.caption = "Steady states found"
+	if len(s.Points()) == 0 {
+		g.columns = []column{{}}
+		g.add("none")
+	}
+	g.note(sentenceCase(s.Statement()))
+	if n, ok := s.(interface{ Notes() []string }); ok {
+		for _, text := range n.Notes() {
+			g.note(sentenceCase(text))
+		}
+	}
+	return g
 }
 
 // specialsIn returns the special points of a slice of any of their types.
@@ -60,7 +81,7 @@ func specialsIn(v any) ([]continuation.Special, bool) {
 	switch v := v.(type) {
 	case []continuation.Special:
 		return v, true
-	case []*continuation.Fold, []*continuation.BranchPoint, []*continuation.Hopf:
+	case []*continuation.Fold, []*continuation.BranchPoint, []*continuation.Hopf, []*continuation.Multiple, []*continuation.Event:
 		r := reflect.ValueOf(v)
 		list := make([]continuation.Special, r.Len())
 		for i := range list {
