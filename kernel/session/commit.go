@@ -22,8 +22,7 @@ func (u *unit) commit(low *lowered) {
 			u.recordUses(d)
 		}
 	}
-	for d, decl := range u.decls {
-		_ = decl
+	for d := range u.decls {
 		if u.fresh[d] && d.kind == typeDef {
 			u.keepOld(d)
 		}
@@ -81,8 +80,7 @@ func (u *unit) keepOld(d *def) {
 	}
 	for _, v := range u.cur.vars {
 		if v.named[old.internal()] == old {
-			u.s.hiddenTypes[old.hidden()] = old
-			u.s.oldMethods[old] = u.cur.methods(old.names[0])
+			u.s.old.add(old, u.cur.methods(old.names[0]))
 			return
 		}
 	}

@@ -119,7 +119,7 @@ func (u *unit) cleanMessage(msg string) string {
 		msg = msg[:at[0]] + dropClosing(msg[at[1]:])
 	}
 	msg = hiddenRE.ReplaceAllStringFunc(msg, func(m string) string {
-		if d := u.s.hiddenTypes[m]; d != nil {
+		if d := u.s.old.named(m); d != nil {
 			return fmt.Sprintf("%s (as it was in %s)", d.names[0], d.src.label())
 		}
 		return hiddenRE.FindStringSubmatch(m)[1]

@@ -45,17 +45,41 @@ func (l *lowerer) fieldPath(e *ast.SelectorExpr, sel *types.Selection) []int {
 	return index
 }
 
-// path follows embedded fields, written out.
+// path follows embedded fields, written out; within a compiled type it goes straight to the last one, for those between may be hidden.
 func (l *lowerer) path(x ast.Expr, t types.Type, index []int) (ast.Expr, types.Type) {
-	for _, i := range index {
+	hidden := false
+	for n, i := range index {
 		if p, ok := t.Underlying().(*types.Pointer); ok {
 			t = p.Elem()
 		}
+		hidden = hidden || l.compiled(t)
 		st := t.Underlying().(*types.Struct)
-		x = &ast.SelectorExpr{X: x, Sel: ast.NewIdent(fieldName(st, i))}
 		t = st.Field(i).Type()
+		if !hidden || n == len(index)-1 {
+			x = &ast.SelectorExpr{X: x, Sel: ast.NewIdent(fieldName(st, i))}
+		}
 	}
 	return x, t
+}
+
+// compiled reports whether a type is one that a compiled package names.
+func (l *lowerer) compiled(t types.Type) bool {
+	n, ok := types.Unalias(t).(*types.Named)
+	return ok && n.Obj().Pkg() != nil && n.Obj().Pkg() != l.u.pkg
+}
+
+// compiledAlong returns how many of the steps to a method lead to a compiled type, which finds its promoted methods itself.
+func (l *lowerer) compiledAlong(t types.Type, index []int) int {
+	for n, i := range index {
+		if p, ok := t.Underlying().(*types.Pointer); ok {
+			t = p.Elem()
+		}
+		if l.compiled(t) {
+			return n
+		}
+		t = t.Underlying().(*types.Struct).Field(i).Type()
+	}
+	return len(index)
 }
 
 // A target is a method found for a receiver.
@@ -74,11 +98,13 @@ func (l *lowerer) method(x ast.Expr, t types.Type, name string, pkg *types.Packa
 	if !ok {
 		l.fail(token.NoPos, "no method %s", name)
 	}
-	recv, rt := l.path(x, t, index[:len(index)-1])
+	steps := index[:len(index)-1]
+	recv, rt := l.path(x, t, steps[:l.compiledAlong(t, steps)])
 	tg := target{fn: fn, recv: recv, typ: rt}
 	switch {
 	case types.IsInterface(rt):
 		tg.dynamic = l.dynamic(rt)
+	case l.compiled(rt):
 	case fn.Pkg() == l.u.pkg:
 		tg.own = l.u.objs[fn.Origin()]
 		if tg.own == nil {
@@ -86,6 +112,22 @@ func (l *lowerer) method(x ast.Expr, t types.Type, name string, pkg *types.Packa
 		}
 	}
 	return tg
+}
+
+// reachable cuts a path short at a field that a compiled package keeps to itself: the interpreter may not call methods by way of it,
+// and the compiled struct around it has them too.
+func (l *lowerer) reachable(t types.Type, index []int) []int {
+	for n, i := range index {
+		if p, ok := t.Underlying().(*types.Pointer); ok {
+			t = p.Elem()
+		}
+		f := t.Underlying().(*types.Struct).Field(i)
+		if !f.Exported() && f.Pkg() != l.u.pkg {
+			return index[:n]
+		}
+		t = f.Type()
+	}
+	return index
 }
 
 // receiver adjusts the receiver of an own method to what its first parameter wants.

@@ -58,18 +58,19 @@ type Session struct {
 	override map[string]reflect.Value
 	offered  map[string]bool
 
-	hiddenTypes map[string]*def // superseded types that values still have
-	oldMethods  map[*def][]*def // and the methods that they had
-	index       int
-	origins     []any
-	bound       map[string]reflect.Value // storage of session variables, by internal name
-	pos, line   *int
+	old       oldTypes
+	index     atomic.Int64
+	origins   []any
+	bound     map[string]reflect.Value // storage of session variables, by internal name
+	pos, line *int
 
 	mu       sync.Mutex
 	current  *run
 	strays   map[int64]*run // goroutines that cells started
 	known    []string       // special points seen, in order
 	knownSet map[string]bool
+	modelled map[string]modelled // names of the models behind variables
+	shorts   map[string]string   // short forms of the values of variables
 	closed   bool
 }
 
@@ -77,8 +78,8 @@ type Session struct {
 func New(Options) (*Session, error) {
 	s := &Session{
 		importer: export.NewImporter(), rtypes: newRtypes(), override: map[string]reflect.Value{}, offered: map[string]bool{},
-		hiddenTypes: map[string]*def{}, oldMethods: map[*def][]*def{}, bound: map[string]reflect.Value{},
-		strays: map[int64]*run{}, knownSet: map[string]bool{},
+		bound:  map[string]reflect.Value{},
+		strays: map[int64]*run{}, knownSet: map[string]bool{}, modelled: map[string]modelled{}, shorts: map[string]string{},
 	}
 	s.tab.Store(&table{defs: map[string]*def{}, vars: map[string]*variable{}, imports: map[string]string{}})
 	for name, f := range s.overrides() {
@@ -96,7 +97,7 @@ func New(Options) (*Session, error) {
 
 func (s *Session) table() *table { return s.tab.Load() }
 
-func (s *Session) nextIndex() int { s.index++; return s.index }
+func (s *Session) nextIndex() int { return int(s.index.Add(1)) }
 
 func (s *Session) addOrigin(o any) int {
 	s.origins = append(s.origins, o)

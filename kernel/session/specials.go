@@ -1,6 +1,7 @@
 package session
 
 import (
+	"fmt"
 	"reflect"
 
 	"brinkline/continuation"
@@ -17,7 +18,10 @@ func (s *Session) Specials() []string {
 func (s *Session) noteVariables(low *lowered) {
 	for _, v := range low.vars {
 		if p, ok := s.bound[v.internal()]; ok && p.Kind() == reflect.Pointer && !p.IsNil() && p.Elem().CanInterface() {
-			s.note(p.Elem().Interface())
+			x := p.Elem().Interface()
+			s.note(x)
+			s.recordNames(v.name, x)
+			s.recordShort(v.name, x)
 		}
 	}
 }
@@ -50,4 +54,25 @@ func (s *Session) remember(sp continuation.Special) {
 		s.knownSet[line] = true
 		s.known = append(s.known, line)
 	}
+}
+
+// recordShort keeps the short form of a value for inspection: plain values in full, of others nothing that would take time.
+func (s *Session) recordShort(name string, x any) {
+	short := ""
+	switch v := reflect.ValueOf(x); v.Kind() {
+	case reflect.Bool, reflect.Int, reflect.Int8, reflect.Int16, reflect.Int32, reflect.Int64, reflect.Uint, reflect.Uint8,
+		reflect.Uint16, reflect.Uint32, reflect.Uint64, reflect.Float32, reflect.Float64, reflect.Complex64, reflect.Complex128:
+		short = fmt.Sprintf("= %v", x)
+	case reflect.String:
+		text := v.String()
+		if len(text) > 60 {
+			text = text[:60] + "..."
+		}
+		short = fmt.Sprintf("= %q", text)
+	case reflect.Slice, reflect.Map:
+		short = fmt.Sprintf("%d elements", v.Len())
+	}
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	s.shorts[name] = short
 }

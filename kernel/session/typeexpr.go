@@ -154,7 +154,7 @@ func (u *unit) currentNames(e ast.Expr, named map[string]*def) ast.Expr {
 			if u.next.defs[d.names[0]] == d {
 				return ast.NewIdent(d.names[0])
 			}
-			u.s.hiddenTypes[d.hidden()] = d
+			u.s.old.add(d, nil)
 		}
 		return ast.NewIdent(e.Name)
 	case *ast.StarExpr:

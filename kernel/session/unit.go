@@ -219,7 +219,7 @@ func (a *assembler) definition(d *def, name string) *parseError {
 		}
 	}
 	if d.kind == typeDef && a.superseded(d) {
-		for _, m := range a.s.oldMethods[d] {
+		for _, m := range a.s.old.methodsOf(d) {
 			if err := a.definition(m, m.names[0]); err != nil {
 				return err
 			}
@@ -250,14 +250,8 @@ func (u *unit) superseded(d *def) bool {
 		return false
 	}
 	if d.kind == methodDef {
-		for t, ms := range u.s.oldMethods {
-			for _, m := range ms {
-				if m == d && u.next.defs[t.names[0]] != t && u.next.defs[d.key()] != d {
-					return true
-				}
-			}
-		}
-		return false
+		t := u.s.old.ownerOf(d)
+		return t != nil && u.next.defs[t.names[0]] != t && u.next.defs[d.key()] != d
 	}
 	return u.next.defs[d.names[0]] != d
 }
@@ -351,10 +345,8 @@ func (a *assembler) needName(name string, env map[string]*def) *parseError {
 	if d := a.s.prelude[name]; d != nil {
 		return a.definition(d, name)
 	}
-	for _, d := range a.s.hiddenTypes {
-		if d.hidden() == name {
-			return a.definition(d, name)
-		}
+	if d := a.s.old.named(name); d != nil {
+		return a.definition(d, name)
 	}
 	if d := a.next.defs[name]; d != nil {
 		if d.broken != nil {
