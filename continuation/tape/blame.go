@@ -13,7 +13,10 @@ func (p *Program) Blame(x, q []float64) string {
 		}
 		n := p.g.nodes[id]
 		values[id] = p.evaluate(n, values, x, q)
-		if n.op.leaf() || !bad(values[id]) {
+	}
+	for id := range need {
+		n := p.g.nodes[id]
+		if !need[id] || n.op.leaf() || !bad(values[id]) {
 			continue
 		}
 		if place := p.spreads(int32(id), n, values); place != "" {
@@ -60,7 +63,7 @@ func (p *Program) spreads(id int32, n node, values []float64) string {
 func (p *Program) reaches(id int32, values []float64) bool {
 	need := make([]bool, len(values))
 	for _, o := range p.out {
-		need[o] = bad(values[o]) || o >= int32(len(values))
+		need[o] = bad(values[o])
 	}
 	for k := int32(len(need)) - 1; k > id; k-- {
 		if !need[k] {

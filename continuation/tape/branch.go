@@ -21,11 +21,10 @@ const (
 	fellThrough
 )
 
-// A construct is a loop, a switch or a labelled block, which can be left.
+// A construct is a loop or a switch, which can be left.
 type construct struct {
 	label   string
 	loop    bool
-	block   bool // left only by its label
 	endless bool // a loop without a condition of its own
 	outer   *construct
 }

@@ -70,4 +70,3 @@ func (f *Family) Recorded() int {
 	defer f.mu.Unlock()
 	return f.recorded
 }
-

@@ -59,9 +59,9 @@ func (r *recorder) mathOther(e *ast.CallExpr, name string, x []int32, whole int)
 	case "Sincos":
 		return value{kind: kTuple, ref: []value{float(g.unary(opSin, x[0], 0)), float(g.unary(opCos, x[0], 0))}}
 	case "J0", "J1", "Jn":
-		return float(g.unary(opBesselJ, x[0], besselOrder(name, whole)))
+		return float(g.unary(opBesselJ, x[len(x)-1], besselOrder(name, whole)))
 	case "Y0", "Y1", "Yn":
-		return float(g.unary(opBesselY, x[0], besselOrder(name, whole)))
+		return float(g.unary(opBesselY, x[len(x)-1], besselOrder(name, whole)))
 	case "Erfcinv":
 		return float(g.unary(opErfinv, g.binary(opSub, g.constant(1), x[0]), 0))
 	case "Pow10":

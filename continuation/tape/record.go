@@ -11,7 +11,7 @@ import (
 
 const (
 	maxNodes  = 2_000_000
-	maxWork   = 60_000_000 // steps of the recorder
+	maxWork   = 20_000_000 // steps of the recorder
 	maxDepth  = 2000       // calls inside of calls
 	maxForks  = 10_000     // conditions that became guards
 	maxExits  = 256        // returns under conditions that are pending at once

@@ -59,7 +59,7 @@ func (r *recorder) stmt(s ast.Stmt, label string) flow {
 	case *ast.BranchStmt:
 		return r.branchStmt(s)
 	case *ast.LabeledStmt:
-		return r.labeled(s)
+		return r.stmt(s.Stmt, s.Label.Name)
 	case *ast.EmptyStmt:
 	default:
 		r.refuse(s, "%s cannot be recorded", statementName(s))
@@ -235,7 +235,7 @@ func (r *recorder) branchStmt(s *ast.BranchStmt) flow {
 		r.refuse(s, "goto cannot be recorded")
 	}
 	for c := r.call.inside; c != nil; c = c.outer {
-		if s.Label != nil && c.label != s.Label.Name || s.Label == nil && c.block {
+		if s.Label != nil && c.label != s.Label.Name {
 			continue
 		}
 		if s.Tok == token.CONTINUE {
@@ -248,15 +248,6 @@ func (r *recorder) branchStmt(s *ast.BranchStmt) flow {
 	}
 	r.refuse(s, "this statement cannot be recorded")
 	return flow{}
-}
-
-func (r *recorder) labeled(s *ast.LabeledStmt) flow {
-	if b, ok := s.Stmt.(*ast.BlockStmt); ok {
-		c := r.enter(&construct{label: s.Label.Name, block: true})
-		mark := len(r.exits)
-		return r.close(c, mark, r.block(b.List))
-	}
-	return r.stmt(s.Stmt, s.Label.Name)
 }
 
 // enter makes c the innermost construct.
