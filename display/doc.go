@@ -6,10 +6,12 @@
 // unstable one a dashed line of the same ink, and one whose stability was not
 // computed a dotted line. A special point is drawn as the local geometry it
 // stands for: a fold is a short bar along the tangent with which the curve turns;
-// a simple stationary bifurcation is the crossing of the branch's tangent with
-// the null vector of f_x, the direction in which the steady states there stop
-// being isolated; a Hopf point is a small ring with a tick. The label beside it
-// says the word and the value.
+// a simple stationary bifurcation is the crossing of the tangents of both
+// branches (where the second could not be computed, of the branch's own and of
+// the null vector of f_x, the direction in which the steady state stops being
+// isolated; where a picture cannot show two directions, of one and its normal); a
+// Hopf point is a small ring with a tick; an event of the analyst's own is a tick
+// across the curve. The label beside it says the word and the value.
 //
 // Of a balance (a model without time) nothing is called stable. Its solid
 // stretches are those on which f_x has as many eigenvalues with positive real
