@@ -1,6 +1,7 @@
 package continuation
 
 import (
+	"errors"
 	"fmt"
 	"math"
 
@@ -168,6 +169,9 @@ func (t *tracer) fold(c *arc, a *node, s *foldSystem, r refined) (*Fold, error) 
 		return nil, err
 	}
 	f.Curvature = -f.Quadratic / f.RangeTest
+	if f.Cubic, err = t.cubic(a, f, s); err != nil {
+		return nil, err
+	}
 	if f.sensitivities, err = t.sensitivities(a, f); err != nil {
 		return nil, err
 	}
@@ -196,6 +200,43 @@ func (t *tracer) quadratic(a *node, w, v []float64) (float64, error) {
 		return 0, t.refuse(err)
 	}
 	return dot(w, out) / 2, nil
+}
+
+// cubic returns the cubic coefficient of a fold, with the factors of the bordered
+// matrix at hand.
+func (t *tracer) cubic(a *node, f *Fold, s *foldSystem) (float64, error) {
+	forms := t.forms(a)
+	v := state(f.Right)
+	vv, err := forms.square(v)
+	if err != nil {
+		return 0, err
+	}
+	h := make([]float64, t.n+1)
+	for i, x := range vv {
+		h[i] = -x / s.rows[i]
+	}
+	s.lu.Solve(h)
+	h = h[:t.n]
+	for i := range h {
+		h[i] *= t.S[i]
+	}
+	along := dot(f.Right, h)
+	for i := range h {
+		h[i] -= along * f.Right[i]
+	}
+	vvv, err := forms.cube(v)
+	var domain *refusal
+	if errors.As(err, &domain) {
+		return math.NaN(), nil
+	}
+	if err != nil {
+		return 0, err
+	}
+	vh, err := forms.product(v, state(h))
+	if err != nil {
+		return 0, err
+	}
+	return (dot(f.Left, vvv) + 3*dot(f.Left, vh)) / 6, nil
 }
 
 // sensitivities returns dλ*/dp_j = -(wᵀ f_{p_j}) / (wᵀ f_λ) for every parameter,

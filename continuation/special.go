@@ -118,6 +118,10 @@ type Fold struct {
 	Quadratic float64
 	// Curvature is -a / wᵀf_λ: the branch is λ - λ* ≈ Curvature s², x - x* ≈ s v.
 	Curvature float64
+	// Cubic is 1/6 wᵀ (f_xxx[v, v, v] + 3 f_xx[v, h]) with f_x h = -f_xx[v, v] up to
+	// a multiple of v, vᵀ h = 0: what is left to turn the branch where Quadratic
+	// vanishes, at a cusp. NaN where the third derivatives could not be had.
+	Cubic float64
 	// WeakLeft says that wᵀ v = 1 is out of reach (a second eigenvalue vanishes
 	// near by): Left has length 1 instead, and Quadratic and RangeTest scale
 	// with it.
