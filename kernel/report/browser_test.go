@@ -50,6 +50,7 @@ func savedPage(t *testing.T) string {
 
 // The colours of the paper in style.css, light and dark.
 func TestBrowserShowsThePageLightAndDarkWithoutComplaint(t *testing.T) {
+	t.Parallel()
 	page := savedPage(t)
 	for _, c := range []struct {
 		scheme, setting string
@@ -80,6 +81,7 @@ func TestBrowserShowsThePageLightAndDarkWithoutComplaint(t *testing.T) {
 
 // A script that got into the page must not run.
 func TestBrowserRefusesScripts(t *testing.T) {
+	t.Parallel()
 	content := strings.Replace(pageOf(t, sample), "</main>", "<script>document.title = 'ran'</script></main>", 1)
 	path := filepath.Join(t.TempDir(), "page.html")
 	if err := os.WriteFile(path, []byte(content), 0o600); err != nil {
@@ -91,6 +93,7 @@ func TestBrowserRefusesScripts(t *testing.T) {
 }
 
 func TestBrowserPrintsThePage(t *testing.T) {
+	t.Parallel()
 	target := filepath.Join(t.TempDir(), "page.pdf")
 	browser(t, savedPage(t), "--no-pdf-header-footer", "--print-to-pdf="+target)
 	content, err := os.ReadFile(target)
