@@ -3,6 +3,7 @@ package display
 import (
 	"math"
 	"strconv"
+	"strings"
 )
 
 // How many digits tables and cards show of values that carry no error estimate:
@@ -69,3 +70,37 @@ func commonDecimals(values []float64, digits []int) (decimals int, ok bool) {
 	decimals = max(fewest, 0)
 	return decimals, least >= 10*math.Pow10(-decimals) || most-fewest <= 1
 }
+
+// evened gives the numbers of a column one number of decimals, so that their points
+// stand one under the other: as many as the longest has, and no more than show the
+// greatest to stateDigits. Where that would leave the least of them with fewer than
+// two digits, or without a number (NaN), cells stay as they are.
+func evened(cells []string, values []float64) []string {
+	decimals, whole, least := 0, 0, math.Inf(1)
+	for i, text := range cells {
+		if strings.Contains(text, "e") {
+			return cells
+		}
+		if v := values[i]; v != 0 && isFinite(v) {
+			before, after, _ := strings.Cut(strings.TrimPrefix(text, "-"), ".")
+			decimals, whole = max(decimals, len(after)), max(whole, len(before))
+			least = min(least, math.Abs(v))
+		}
+	}
+	if fit := max(0, stateDigits-whole); decimals > fit {
+		decimals = fit
+		if least < 10*math.Pow10(-decimals) {
+			return cells
+		}
+	}
+	out := make([]string, len(cells))
+	for i, v := range values {
+		out[i] = cells[i]
+		if v != 0 && isFinite(v) {
+			out[i] = strconv.FormatFloat(v, 'f', decimals, 64)
+		}
+	}
+	return out
+}
+
+func isFinite(v float64) bool { return !math.IsNaN(v) && !math.IsInf(v, 0) }

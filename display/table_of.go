@@ -2,6 +2,7 @@ package display
 
 import (
 	"fmt"
+	"math"
 	"reflect"
 	"sort"
 
@@ -127,16 +128,33 @@ func structTable(list reflect.Value, elem reflect.Type) *Grid {
 		g.columns = append(g.columns, column{head, isNumber(f.Type.Kind())})
 		fields = append(fields, i)
 	}
+	columns := make([][]string, len(fields))
+	for k, at := range fields {
+		columns[k] = fieldCells(list, at)
+	}
 	for i := range list.Len() {
 		cells := make([]string, len(fields))
-		if e := reflect.Indirect(list.Index(i)); e.IsValid() {
-			for k, at := range fields {
-				cells[k] = cellText(e.Field(at))
-			}
+		for k := range fields {
+			cells[k] = columns[k][i]
 		}
 		g.add(cells...)
 	}
 	return g
+}
+
+// fieldCells writes one field of all structs of a list; nil pointers leave a gap.
+func fieldCells(list reflect.Value, at int) []string {
+	cells, values := make([]string, list.Len()), make([]float64, list.Len())
+	for i := range cells {
+		values[i] = math.NaN()
+		if e := reflect.Indirect(list.Index(i)); e.IsValid() {
+			cells[i] = cellText(e.Field(at))
+			if f := e.Field(at); f.CanFloat() {
+				values[i] = f.Float()
+			}
+		}
+	}
+	return evened(cells, values)
 }
 
 func isNumber(k reflect.Kind) bool { return k >= reflect.Int && k <= reflect.Float64 }
