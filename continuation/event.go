@@ -33,6 +33,8 @@ type watch struct {
 	name string
 	f    func(*Point) float64
 	stop bool
+	// quiet: NaN is an answer and no reason for a note.
+	quiet bool
 }
 
 // Mark marks every point of the branch at which f is zero under a name, located to
@@ -52,7 +54,7 @@ func watchFor(name string, f func(*Point) float64, stop bool) FollowOption {
 				return fmt.Errorf("two events are named %s", name)
 			}
 		}
-		p.watches = append(p.watches, watch{name, f, stop})
+		p.watches = append(p.watches, watch{name: name, f: f, stop: stop})
 		return nil
 	}
 }
@@ -84,6 +86,9 @@ func (t *tracer) events(a, b *node) ([]*node, error) {
 func (t *tracer) event(c *arc, w watch) (*node, error) {
 	fa, fb := w.f(t.point(c.a)), w.f(t.point(c.b))
 	if math.IsNaN(fa) || math.IsNaN(fb) {
+		if w.quiet {
+			return nil, nil
+		}
 		t.noteOnce(fmt.Sprintf("the event %q is NaN near %s and is not looked for there", w.name, t.where(c.b)))
 		return nil, nil
 	}

@@ -17,7 +17,12 @@ const (
 // that a refinement confirms; else the arc is divided. What stays unexplained at
 // a jump of the determinant refuses the step; what stays unexplained otherwise
 // is noted.
-func (t *tracer) explain(c *arc) ([]*node, error) { return t.resolve(c, 0) }
+func (t *tracer) explain(c *arc) ([]*node, error) {
+	if t.plan.locus != nil {
+		return nil, nil // a locus has events of its own kinds
+	}
+	return t.resolve(c, 0)
+}
 
 // changes says what differs between the ends of an arc.
 type changes struct {

@@ -64,7 +64,7 @@ func begin(p *Point, j int, plan *plan) (*tracer, error) {
 // startAtFold marks a start that is a fold itself: no change of sign on either
 // side of it would show.
 func (t *tracer) startAtFold(a *node) error {
-	if math.Abs(a.t[t.n]) > 1e-5 {
+	if math.Abs(a.t[t.n]) > 1e-5 || t.plan.locus != nil {
 		return nil
 	}
 	ahead, err := t.reach(a, t.plan.first)
@@ -230,6 +230,9 @@ func (r *run) both() *Branch {
 		r.up.end = &End{Reason: NotFollowed, Text: "was not followed towards greater values"}
 	}
 	closed := r.up.end.Reason == Closed
+	if r.plan.locus != nil {
+		r.plan.locus.restart()
+	}
 	r.down = r.up.turned()
 	switch {
 	case closed:
@@ -392,7 +395,7 @@ func (t *tracer) point(a *node) *Point {
 		State: a.x, Parameters: append([]float64(nil), t.s.p...), Parameter: t.s.m.parameters[t.s.free].Name,
 		Eigenvalues: a.eigenvalues, Unstable: a.unstable,
 		StepLength: a.step, Arclength: a.arc, Iterations: a.iterations, model: t.s.m, free: t.s.free,
-		sizes: &sizes{t.s.sx, t.most},
+		sizes: &sizes{t.s.sx, t.most, t.S[t.n]},
 	}
 	p.Parameters[t.s.free] = a.lambda
 	p.Tangent = make([]float64, len(a.t))

@@ -6,20 +6,23 @@ import "math"
 // forms in z = (x, λ), in the user's units, by polarisation of the directional
 // ones.
 type forms struct {
-	t *tracer
-	a *node
+	s     *system
+	n     int
+	x, p  []float64
+	free  int       // index of λ, -1 for none
+	sizes []float64 // of z
 }
 
 func (t *tracer) forms(a *node) forms {
 	t.s.p[t.s.free] = a.lambda
-	return forms{t, a}
+	return forms{t.s, t.n, a.x, t.s.p, t.s.free, t.S}
 }
 
 // square returns f_zz[a, a].
 func (f forms) square(a []float64) ([]float64, error) {
-	out := make([]float64, f.t.n)
-	if err := f.t.s.diff.Second(f.a.x, f.t.s.p, f.t.s.free, a, out); err != nil {
-		return nil, f.t.refuse(err)
+	out := make([]float64, f.n)
+	if err := f.s.diff.Second(f.x, f.p, f.free, a, out); err != nil {
+		return nil, refuse(err)
 	}
 	return out, nil
 }
@@ -29,7 +32,7 @@ func (f forms) square(a []float64) ([]float64, error) {
 func (f forms) product(a, b []float64) ([]float64, error) {
 	la, lb := f.length(a), f.length(b)
 	if la == 0 || lb == 0 {
-		return make([]float64, f.t.n), nil
+		return make([]float64, f.n), nil
 	}
 	plus, minus := make([]float64, len(a)), make([]float64, len(a))
 	for i := range a {
@@ -53,20 +56,20 @@ func (f forms) product(a, b []float64) ([]float64, error) {
 func (f forms) length(a []float64) float64 {
 	sum := 0.0
 	for i, v := range a {
-		sum += v / f.t.S[i] * v / f.t.S[i]
+		sum += v / f.sizes[i] * v / f.sizes[i]
 	}
 	return math.Sqrt(sum)
 }
 
 // cube returns f_zzz[a, a, a].
 func (f forms) cube(a []float64) ([]float64, error) {
-	out := make([]float64, f.t.n)
-	d, ok := f.t.s.diff.(ThirdOrder)
+	out := make([]float64, f.n)
+	d, ok := f.s.diff.(ThirdOrder)
 	if !ok {
-		d = differences{}.For(f.t.s).(ThirdOrder)
+		d = differences{}.For(f.s).(ThirdOrder)
 	}
-	if err := d.Third(f.a.x, f.t.s.p, f.t.s.free, a, out); err != nil {
-		return nil, f.t.refuse(err)
+	if err := d.Third(f.x, f.p, f.free, a, out); err != nil {
+		return nil, refuse(err)
 	}
 	return out, nil
 }
@@ -85,7 +88,7 @@ func (f forms) mixedCube(a, b []float64) ([]float64, error) {
 			return nil, err
 		}
 	}
-	out := make([]float64, f.t.n)
+	out := make([]float64, f.n)
 	for i := range out {
 		out[i] = (terms[0][i] + terms[1][i] - 2*terms[2][i]) / 6
 	}

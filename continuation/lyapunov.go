@@ -29,7 +29,7 @@ func (t *tracer) oscillation(a *node, h *Hopf) error {
 	if h.CrossingSpeed, err = t.crossingSpeed(forms, pair); err != nil {
 		return err
 	}
-	h.Lyapunov, err = t.lyapunov(forms, pair, h.Omega)
+	h.Lyapunov, err = forms.lyapunov(pair, h.Omega)
 	return err
 }
 
@@ -42,12 +42,21 @@ type criticalPair struct {
 
 // criticalPair finds the eigenvectors of f_x, whose entries are at hand.
 func (t *tracer) criticalPair(omega float64) (*criticalPair, error) {
-	n := t.n
-	fx, scaled := make([]float64, n*n), mat.NewDense(n, n, nil)
+	fx := make([]float64, t.n*t.n)
+	for i := range t.n {
+		copy(fx[i*t.n:(i+1)*t.n], t.jac[i*(t.n+1):])
+	}
+	return newCriticalPair(fx, t.S[:t.n], omega)
+}
+
+// newCriticalPair finds the eigenvectors of fx to the eigenvalue nearest iω; sizes
+// are those of the states.
+func newCriticalPair(fx, sizes []float64, omega float64) (*criticalPair, error) {
+	n := len(sizes)
+	scaled := mat.NewDense(n, n, nil)
 	for i := range n {
 		for k := range n {
-			fx[i*n+k] = t.jac[i*(n+1)+k]
-			scaled.Set(i, k, fx[i*n+k]*t.S[k]/t.S[i])
+			scaled.Set(i, k, fx[i*n+k]*sizes[k]/sizes[i])
 		}
 	}
 	var e mat.Eigen
@@ -66,8 +75,8 @@ func (t *tracer) criticalPair(omega float64) (*criticalPair, error) {
 	e.LeftVectorsTo(&left)
 	c := &criticalPair{q: make([]complex128, n), p: make([]complex128, n), fx: fx}
 	for i := range n {
-		c.q[i] = right.At(i, best) * complex(t.S[i], 0)
-		c.p[i] = left.At(i, best) / complex(t.S[i], 0)
+		c.q[i] = right.At(i, best) * complex(sizes[i], 0)
+		c.p[i] = left.At(i, best) / complex(sizes[i], 0)
 	}
 	c.normalise()
 	return c, nil
@@ -157,8 +166,9 @@ func (t *tracer) crossingSpeed(f forms, c *criticalPair) (float64, error) {
 	return real(hermitian(c.p, b)), nil
 }
 
-func (t *tracer) lyapunov(f forms, c *criticalPair, omega float64) (float64, error) {
-	n := t.n
+// lyapunov returns the first Lyapunov coefficient of the pair.
+func (f forms) lyapunov(c *criticalPair, omega float64) (float64, error) {
+	n := f.n
 	re, im := split(c.q)
 	minus := negated(im)
 	cubic, err := f.cubicForm(re, im)

@@ -25,6 +25,8 @@ type plan struct {
 	local       string  // local parameter: arclength, natural, automatic, or a state's name
 	up, down    bool
 	spectra     spectra
+	locus       *locusPlan // set when a locus is followed
+	eventful    bool       // special points of a locus are looked for
 }
 
 type bound struct {
@@ -42,7 +44,7 @@ func newPlan(opts []FollowOption) (*plan, error) {
 	p := &plan{
 		low: math.Inf(-1), high: math.Inf(1), maxSteps: 2000,
 		first: 0.01, least: 1e-8, most: 0.05, tolerance: 1e-10, maxTurn: 0.5,
-		up: true, down: true,
+		up: true, down: true, eventful: true,
 	}
 	for _, set := range opts {
 		if err := set(p); err != nil {

@@ -38,7 +38,10 @@ type Point struct {
 
 // sizes are what a run has learnt of the sizes of states and equations; a run
 // that starts from one of its points begins with them.
-type sizes struct{ states, equations []float64 }
+type sizes struct {
+	states, equations []float64
+	parameter         float64 // of the one that was followed
+}
 
 // Model returns the model that the point belongs to.
 func (p *Point) Model() *Model { return p.model }

@@ -210,6 +210,10 @@ func (t *tracer) accept(a *node, chain []*node) {
 	}
 	t.nodes = append(t.nodes, chain...)
 	t.steps++
+	if t.plan.locus != nil {
+		// A border that cannot be renewed serves on for a while.
+		_ = t.plan.locus.moved(t, b)
+	}
 	turn := math.Acos(math.Max(-1, math.Min(1, dot(a.t, b.t))))
 	factor := mostGrowth
 	factor = math.Min(factor, aimedTurn/math.Max(turn, 1e-6))

@@ -334,7 +334,9 @@ func (t *tracer) confirm(a *node) error {
 	return nil
 }
 
-func (t *tracer) refuse(err error) error {
+func (t *tracer) refuse(err error) error { return refuse(err) }
+
+func refuse(err error) error {
 	if errors.Is(err, ErrInterrupted) {
 		return err
 	}

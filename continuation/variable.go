@@ -196,24 +196,27 @@ func nearest(name string, names []string) string {
 	return best
 }
 
-// edits is the Levenshtein distance: how many letters must be put in, taken out
-// or changed to get from a to b.
+// edits is how many letters must be put in, taken out, changed or swapped with
+// their neighbour to get from a to b (Damerau's distance, restricted).
 func edits(a, b string) int {
-	row := make([]int, len(b)+1)
-	for j := range row {
-		row[j] = j
+	before, last := make([]int, len(b)+1), make([]int, len(b)+1)
+	for j := range last {
+		last[j] = j
 	}
-	for i := range len(a) {
-		diagonal := row[0]
-		row[0] = i + 1
-		for j := range len(b) {
-			change := diagonal
-			if a[i] != b[j] {
+	for i := 1; i <= len(a); i++ {
+		row := make([]int, len(b)+1)
+		row[0] = i
+		for j := 1; j <= len(b); j++ {
+			change := last[j-1]
+			if a[i-1] != b[j-1] {
 				change++
 			}
-			diagonal = row[j+1]
-			row[j+1] = min(change, row[j]+1, row[j+1]+1)
+			row[j] = min(change, row[j-1]+1, last[j]+1)
+			if i > 1 && j > 1 && a[i-1] == b[j-2] && a[i-2] == b[j-1] {
+				row[j] = min(row[j], before[j-2]+1)
+			}
 		}
+		before, last = last, row
 	}
-	return row[len(b)]
+	return last[len(b)]
 }

@@ -78,6 +78,8 @@ type Fact struct {
 	ParamQuad     Number            `json:"parameter_quadratic"`
 	Cubic         Number            `json:"cubic"`
 	Tangents      [][]Number        `json:"tangents"`
+	A2            Number            `json:"a2"`
+	B2            Number            `json:"b2"`
 	Omega         Number            `json:"omega"`
 	Lyapunov      Number            `json:"lyapunov"`
 	CrossingSpeed Number            `json:"crossing_speed"`
