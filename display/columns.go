@@ -78,10 +78,10 @@ func commonDecimals(values []float64, digits []int) (decimals int, ok bool) {
 func evened(cells []string, values []float64) []string {
 	decimals, whole, least := 0, 0, math.Inf(1)
 	for i, text := range cells {
-		if strings.Contains(text, "e") {
-			return cells
-		}
 		if v := values[i]; v != 0 && isFinite(v) {
+			if strings.Contains(text, "e") {
+				return cells
+			}
 			before, after, _ := strings.Cut(strings.TrimPrefix(text, "-"), ".")
 			decimals, whole = max(decimals, len(after)), max(whole, len(before))
 			least = min(least, math.Abs(v))
