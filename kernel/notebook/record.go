@@ -52,7 +52,6 @@ func (o *cellOutput) print(name, content string) {
 	if content == "" {
 		return
 	}
-	content = strings.ToValidUTF8(content, string(utf8.RuneError))
 	o.add("", func() map[string]any {
 		if n := len(o.outputs); n > 0 {
 			last := o.outputs[n-1]
@@ -202,7 +201,7 @@ func stored(out map[string]any) map[string]any {
 		copied[key] = value
 	}
 	if text, ok := out["text"].(*strings.Builder); ok {
-		copied["text"] = lines(text.String())
+		copied["text"] = lines(strings.ToValidUTF8(text.String(), string(utf8.RuneError))) // once: a cell may print half a character
 	}
 	if data, ok := out["data"].(map[string]any); ok {
 		split := make(map[string]any, len(data))

@@ -20,12 +20,12 @@ import (
 func TestAdjacentStreamsOfOneNameAreMerged(t *testing.T) {
 	nb := cells(t, "x")
 	_ = Run(context.Background(), nb, script{"x": func(out session.Output) session.Result {
-		for _, s := range [][2]string{{"stdout", "a"}, {"stdout", ""}, {"stdout", "b\n"}, {"stderr", "e"}, {"stdout", "c\xff"}} {
+		for _, s := range [][2]string{{"stdout", "a"}, {"stdout", ""}, {"stdout", "b\n"}, {"stderr", "e"}, {"stdout", "c\xff\xce"}, {"stdout", "\xbb"}} {
 			out.Stream(s[0], s[1])
 		}
 		return session.Result{}
 	}}, nil)
-	expect(t, nb, "1: streamstdout(ab\n) streamstderr(e) streamstdout(c\ufffd)")
+	expect(t, nb, "1: streamstdout(ab\n) streamstderr(e) streamstdout(c\ufffdλ)")
 }
 
 func TestDisplayIDsRewriteEarlierOutputsInAnyCell(t *testing.T) {
