@@ -4,7 +4,9 @@
 package jupytertest
 
 import (
+	"encoding/json"
 	"fmt"
+	"net"
 	"os"
 	"os/exec"
 	"path/filepath"
@@ -81,7 +83,12 @@ func script(t *testing.T, args ...string) string {
 func TestClient(t *testing.T) {
 	need(t, "jupyter_client")
 	for _, class := range []string{"Cells", "Questions", "Interrupts", "Life"} {
-		t.Run(class, func(t *testing.T) { script(t, "client.py", "-v", class) })
+		t.Run(class, func(t *testing.T) {
+			if class != "Interrupts" { // which measures time
+				t.Parallel()
+			}
+			script(t, "client.py", "-v", class)
+		})
 	}
 }
 
@@ -89,10 +96,74 @@ func TestClient(t *testing.T) {
 // skipped is a failure here.
 func TestKit(t *testing.T) {
 	need(t, "jupyter_kernel_test")
+	t.Parallel()
 	out := script(t, "kit.py", "-v")
 	for line := range strings.Lines(out) {
-		if strings.Contains(line, "skipped") && !strings.Contains(line, "test_clear_output") { // no cell can clear its output yet
+		if strings.Contains(line, "... skipped") && !strings.Contains(line, "test_clear_output") { // no cell can clear its output yet
 			t.Error(line)
+		}
+	}
+}
+
+func TestHeadless(t *testing.T) {
+	need(t, "nbclient", "nbconvert")
+	t.Parallel()
+	script(t, "headless.py", "-v")
+}
+
+func TestConsole(t *testing.T) {
+	need(t, "jupyter_console", "pexpect")
+	t.Parallel()
+	script(t, "console.py", "-v")
+}
+
+// TestClientsFindTheKernel looks at the kernel as the reference client lists it.
+func TestClientsFindTheKernel(t *testing.T) {
+	need(t, "jupyter_client")
+	t.Parallel()
+	out := script(t, "-m", "jupyter_client.kernelspecapp", "list", "--json")
+	var list struct {
+		Kernelspecs map[string]struct {
+			Dir  string `json:"resource_dir"`
+			Spec struct {
+				Argv          []string
+				DisplayName   string `json:"display_name"`
+				InterruptMode string `json:"interrupt_mode"`
+			}
+		}
+	}
+	start := strings.Index(out, "{") // warnings may come first
+	if start < 0 || json.Unmarshal([]byte(out[start:]), &list) != nil {
+		t.Fatalf("no list:\n%s", out)
+	}
+	k := list.Kernelspecs["brinkline"]
+	if len(k.Spec.Argv) == 0 || k.Spec.Argv[0] != program || k.Spec.DisplayName != "Brinkline" || k.Spec.InterruptMode != "message" {
+		t.Errorf("the client sees %+v", k)
+	}
+}
+
+// TestAKernelThatCannotStart asks the command for one clear line and exit code 1.
+func TestAKernelThatCannotStart(t *testing.T) {
+	l, err := net.Listen("tcp", "127.0.0.1:0")
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer l.Close()
+	taken := fmt.Sprintf(`{"transport": "tcp", "ip": "127.0.0.1", "key": "", "signature_scheme": "hmac-sha256", "shell_port": 0,
+		"iopub_port": 0, "stdin_port": 0, "hb_port": 0, "control_port": %d}`, l.Addr().(*net.TCPAddr).Port)
+	for text, want := range map[string]string{
+		"{":   "is not a JSON object",
+		"{}":  "shell_port is missing",
+		taken: "is taken by another program",
+	} {
+		path := filepath.Join(t.TempDir(), "connection.json")
+		if err := os.WriteFile(path, []byte(text), 0o600); err != nil {
+			t.Fatal(err)
+		}
+		cmd := exec.Command(program, "kernel", path)
+		out, _ := cmd.CombinedOutput()
+		if cmd.ProcessState.ExitCode() != 1 || strings.Count(string(out), "\n") != 1 || !strings.Contains(string(out), want) {
+			t.Errorf("%s: exit code %d and\n%swant 1 and a line with %q", text, cmd.ProcessState.ExitCode(), out, want)
 		}
 	}
 }

@@ -42,8 +42,8 @@ func (s *Session) begin(ctx context.Context, src *source, out Output) *run {
 	return r
 }
 
+// end closes a run. Its context stays: goroutines of the cell may outlive it.
 func (s *Session) end(r *run) {
-	r.cancel()
 	s.mu.Lock()
 	defer s.mu.Unlock()
 	if s.current == r {
@@ -96,6 +96,8 @@ func (s *Session) interruptedError() *Error {
 // panicError words what a panic left.
 func (s *Session) panicError(v any, frames []string) *Error {
 	switch v := v.(type) {
+	case quietEnd:
+		return nil
 	case *stop:
 		return s.stopError(v)
 	case interruption:
@@ -341,6 +343,9 @@ func (s *Session) overrides() map[string]any {
 	m["brinkline/display/display.Show"] = s.displayShow
 	m["time/time.Sleep"] = s.sleep
 	m["os/os.Exit"] = func(code int) {
+		if code == 0 {
+			panic(quietEnd{})
+		}
 		panic(&userPanic{fmt.Errorf("os.Exit(%d) would end the session; a cell cannot do that", code)})
 	}
 	return m

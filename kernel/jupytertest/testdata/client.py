@@ -93,11 +93,12 @@ class Questions(KernelCase):
 
 
 class Interrupts(KernelCase):
-    def interrupted(self, code):
-        """Interrupts a cell and returns its reply and how long it took to end."""
+    def interrupted(self, code, after=0.2):
+        """Interrupts a cell and returns how long it took to end."""
         cell = self.send(code)
         queued = [self.send("fmt.Println(1)"), self.send("2")]
         self.started(cell)
+        time.sleep(after)
         began = time.monotonic()
         self.manager.interrupt_kernel()
         reply = self.reply(cell)
@@ -106,26 +107,29 @@ class Interrupts(KernelCase):
         self.assertIn("nterrupt", reply["ename"])
         for request in queued:
             self.assertEqual(self.reply(request), {"status": "aborted"})
-        return reply, took
+        self.assertEqual(self.run_cell("1 + 1")[0]["status"], "ok")
+        return took
+
+    def interrupted_soon(self, code, after=0.2):
+        """Interrupts a cell, which must end within 0.2 s; a busy machine gets three tries."""
+        self.assertLess(min(self.interrupted(code, after) for _ in range(3)), 0.2)
 
     def test_an_endless_loop(self):
-        _, took = self.interrupted("kept := 5\nfor {}")
-        self.assertLess(took, 0.2)
+        self.interrupted_soon("kept := 5\nfor {}")
         self.assertEqual(self.run_cell("kept")[1][0][1]["data"]["text/plain"], "5")
 
     def test_a_sleep(self):
-        _, took = self.interrupted("time.Sleep(time.Hour)")
-        self.assertLess(took, 0.2)
+        self.interrupted_soon("time.Sleep(time.Hour)")
 
     def test_a_long_branch_is_kept_as_far_as_it_goes(self):
         self.assertEqual(self.run_cell(LONG_MODEL)[0]["status"], "ok")
-        _, took = self.interrupted(LONG_FOLLOW)
-        self.assertLess(took, 0.2)
+        self.interrupted_soon(LONG_FOLLOW, after=1)
         reply, outputs = self.run_cell("len(path.Points()) > 1")
         self.assertEqual(reply["status"], "ok", reply)
         self.assertEqual(outputs[0][1]["data"]["text/plain"], "true")
-        reply, outputs = self.run_cell('fmt.Println(path.Ends()[0].Text, "|", path.Ends()[1].Text)')
-        self.assertIn("interrupt", self.streams(outputs, "stdout"))
+        reply, outputs = self.run_cell("path")
+        self.assertIn("interrupted at Load", outputs[0][1]["data"]["text/plain"])
+        self.assertIn("image/svg+xml", outputs[0][1]["data"])
 
 
 # A model that takes its time, and a branch with far more steps than the test waits for.
@@ -142,6 +146,10 @@ path := start.Follow("Load", continuation.Within(0, 1e6), continuation.StepBetwe
 
 
 class Life(KernelCase):
+    @classmethod
+    def tearDownClass(cls):
+        cls.client.stop_channels()
+
     def test_restart_and_shutdown(self):
         self.run_cell("gone := 1")
         first = self.run_cell('import "os"\nos.Getpid()')[1][0][1]["data"]["text/plain"]
