@@ -7,22 +7,66 @@ import (
 	"go/types"
 	"slices"
 	"strings"
+
+	"brinkline/kernel/session/internal/export"
 )
 
-// check checks the cell to the end: its statements first, which fixes the types of the variables that it binds, then the bodies of
-// the functions that it defines or changes. Definitions of earlier cells that no longer fit are set aside as broken.
+// check checks the cell to the end. Where a function that the cell defines or changes mentions a variable that the cell binds, the
+// statements are checked first, which fixes the types of the variables, and everything again with these. Definitions of earlier cells
+// that no longer fit are set aside as broken.
 func (u *unit) check() *Error {
 	if err := u.define(); err != nil {
 		return err
 	}
-	if err := u.phase(false, false); err != nil {
+	mixed := u.mentionsCellNames()
+	if err := u.phase(false, !mixed); err != nil {
 		return err
 	}
 	if err := u.bind(); err != nil {
 		return err
 	}
+	before := len(u.fresh)
 	u.spread()
+	if !mixed && len(u.fresh) == before {
+		return nil
+	}
 	return u.phase(true, true)
+}
+
+// mentionsCellNames reports whether a new or changed definition mentions a name that the statements of the cell may bind.
+func (u *unit) mentionsCellNames() bool {
+	if len(u.fresh) == 0 || !u.sp.hasBody {
+		return false
+	}
+	toks, _ := scan(u.sp.statements)
+	bound := map[string]bool{}
+	for _, t := range toks { // more than are bound, which only costs time
+		if t.tok == token.IDENT {
+			bound[t.lit] = true
+		}
+	}
+	for n := range bound {
+		if u.next.defs[n] != nil && u.cur.vars[n] == nil {
+			delete(bound, n)
+		}
+	}
+	for d := range u.fresh {
+		toks, _ := scan(d.text)
+		for i, t := range toks {
+			if t.tok == token.IDENT && bound[t.lit] && (i == 0 || toks[i-1].tok != token.PERIOD) && !u.isLibraryName(t.lit) {
+				return true
+			}
+		}
+	}
+	return false
+}
+
+// isLibraryName reports whether a name is a package or predeclared, and not bound by any cell.
+func (u *unit) isLibraryName(name string) bool {
+	if u.cur.vars[name] != nil {
+		return false
+	}
+	return u.next.imports[name] != "" || export.Preloaded()[name] != "" || types.Universe.Lookup(name) != nil
 }
 
 // phase assembles and checks until no definition has to be set aside.
@@ -145,13 +189,10 @@ func (u *unit) setAside(d *def, fault *types.Error) bool {
 	if d.broken != nil || d.prelude {
 		return false
 	}
-	if d.src == u.sp.src && !strings.HasPrefix(fault.Msg, "undefined: ") {
-		return false
-	}
 	if d.src == u.sp.src {
 		for i := range u.faults {
 			_, o, _ := u.pl.find(u.faults[i].Pos)
-			if o == d && !strings.HasPrefix(u.faults[i].Msg, "undefined: ") {
+			if o == d && !u.mayCome(&u.faults[i]) {
 				return false
 			}
 		}
@@ -169,6 +210,21 @@ func (u *unit) setAside(d *def, fault *types.Error) bool {
 	u.fresh[&broken] = true
 	u.next.put(&broken)
 	return true
+}
+
+// mayCome reports whether a later cell can mend a fault: it can define a name or a method. What is near a name that exists is taken
+// for a slip, which is better told at once.
+func (u *unit) mayCome(f *types.Error) bool {
+	if missing, ok := strings.CutPrefix(f.Msg, "undefined: "); ok {
+		d := u.next.byName(missing)
+		return d != nil && d.broken != nil || !strings.HasPrefix(u.nearestName(missing, f), "did you mean")
+	}
+	for _, part := range []string{"missing method ", "has no field or method ", "impossible type switch case", "undefined array length"} {
+		if strings.Contains(f.Msg, part) {
+			return u.memberHint(f.Msg) == "" && !strings.Contains(f.Msg, "but does have")
+		}
+	}
+	return false
 }
 
 // bind finds the variables that the cell binds at its top level and how that changes the table.

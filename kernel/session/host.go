@@ -7,6 +7,7 @@ import (
 	"reflect"
 	"runtime"
 	"strings"
+	"unicode/utf8"
 
 	"brinkline/kernel/session/internal/symbols"
 )
@@ -26,7 +27,10 @@ func (s *Session) hostFuncs() map[string]any {
 		"Register":   s.registerMethod,
 		"Equal":      func(a, b any) bool { return equal(a, b) },
 		"Same":       func(a, b any) bool { return equal(a, b) },
-		"IsNil":      isNilValue,
+		"IsNil":      func(x any) bool { return x == nil },
+		"NilFunc":    isNilFunc,
+		"Unpack":     unpack,
+		"Rune":       func(s string, i int) (rune, int) { return utf8.DecodeRuneInString(s[i:]) },
 		"Complex":    func(re, im float64) complex128 { return complex(re, im) },
 		"Clear":      clearValue,
 		"Panic":      func(v any, pos int) { s.setPosition(pos); panic(cellPanic(v)) },
@@ -40,8 +44,8 @@ func (s *Session) hostFuncs() map[string]any {
 		"MaxUint":    func(a ...uint64) uint64 { return fold(a, most[uint64]) },
 		"MinString":  func(a ...string) string { return fold(a, least[string]) },
 		"MaxString":  func(a ...string) string { return fold(a, most[string]) },
-		"Print":      func(a ...any) { s.stderr(fmt.Sprint(printables(a)...)) },
-		"Println":    func(a ...any) { s.stderr(fmt.Sprintln(printables(a)...)) },
+		"Print":      func(a ...any) { s.stderr(builtinPrint(a, "")) },
+		"Println":    func(a ...any) { s.stderr(builtinPrint(a, " ") + "\n") },
 		"ErrorsAs":   s.errorsAs,
 		"Depth":      s.checkDepth,
 		"Go":         s.goroutine,
@@ -178,7 +182,8 @@ func equal(a, b any) bool {
 	return a == b
 }
 
-func isNilValue(x any) bool {
+// isNilFunc reports whether a function value is nil.
+func isNilFunc(x any) bool {
 	if x == nil {
 		return true
 	}
@@ -186,6 +191,33 @@ func isNilValue(x any) bool {
 		return v.IsNil()
 	}
 	return false
+}
+
+// unpack stores a value where ptr points.
+func unpack(x, ptr any) {
+	dst := reflect.ValueOf(ptr).Elem()
+	if x == nil {
+		dst.SetZero()
+		return
+	}
+	dst.Set(adapt(reflect.ValueOf(x), dst.Type()))
+}
+
+// adapt makes a value one of a type with the same memory. The interpreter builds several reflect types for one recursive type.
+func adapt(v reflect.Value, t reflect.Type) reflect.Value {
+	switch {
+	case v.Type().AssignableTo(t):
+		return v
+	case v.Kind() == reflect.Pointer && t.Kind() == reflect.Pointer:
+		return reflect.NewAt(t.Elem(), v.UnsafePointer()).Convert(t)
+	case v.CanConvert(t):
+		return v.Convert(t)
+	case v.Kind() == reflect.Struct && t.Kind() == reflect.Struct && v.Type().Size() == t.Size():
+		p := reflect.New(v.Type())
+		p.Elem().Set(v)
+		return reflect.NewAt(t, p.UnsafePointer()).Elem()
+	}
+	return v
 }
 
 func clearValue(x any) { reflect.ValueOf(x).Clear() }

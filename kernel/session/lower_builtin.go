@@ -15,6 +15,11 @@ func (l *lowerer) builtin(e *ast.CallExpr, fun ast.Expr) ast.Expr {
 	case *ast.SelectorExpr:
 		name = f.Sel.Name
 	}
+	if len(e.Args) == 1 {
+		if tuple, ok := l.typeOf(e.Args[0]).(*types.Tuple); ok {
+			return l.spreadBuiltin(name, e, tuple)
+		}
+	}
 	switch name {
 	case "append":
 		return l.appendCall(e)
@@ -54,6 +59,36 @@ func (l *lowerer) builtin(e *ast.CallExpr, fun ast.Expr) ast.Expr {
 	return call(ast.NewIdent(name), args...)
 }
 
+// spreadBuiltin lowers a predeclared function whose arguments are the results of one call.
+func (l *lowerer) spreadBuiltin(name string, e *ast.CallExpr, tuple *types.Tuple) ast.Expr {
+	names, stmt := l.spreadInto(e.Args[0], tuple)
+	anyT := types.NewInterfaceType(nil, nil)
+	var args []ast.Expr
+	for i, n := range names {
+		x := ast.Expr(ast.NewIdent(n))
+		switch name {
+		case "print", "println":
+			x = l.convert(x, tuple.At(i).Type(), anyT)
+		case "complex":
+			x = call(ast.NewIdent("float64"), x)
+		case "append":
+			if i > 0 {
+				x = l.convert(x, tuple.At(i).Type(), tuple.At(0).Type().Underlying().(*types.Slice).Elem())
+			}
+		}
+		args = append(args, x)
+	}
+	fun := map[string]ast.Expr{"print": host("Print"), "println": host("Println"), "complex": host("Complex")}[name]
+	if fun == nil {
+		fun = ast.NewIdent(name)
+	}
+	if name == "print" || name == "println" {
+		return closure(nil, stmt, exprStmt(call(fun, args...)))
+	}
+	t := l.typeOf(e)
+	return closure([]ast.Expr{l.typ(t)}, stmt, &ast.ReturnStmt{Results: []ast.Expr{call(l.conversionFun(t), call(fun, args...))}})
+}
+
 func (l *lowerer) anyArgs(args []ast.Expr) []ast.Expr {
 	var out []ast.Expr
 	for _, a := range args {
@@ -68,6 +103,14 @@ func (l *lowerer) appendCall(e *ast.CallExpr) ast.Expr {
 	args := []ast.Expr{l.exprTo(e.Args[0], t)}
 	if isNil(l.typeOf(e.Args[0])) {
 		args[0] = l.zero(t)
+	}
+	if len(e.Args) > 2 {
+		// The interpreter would evaluate later values after storing earlier ones.
+		list := &ast.CompositeLit{Type: &ast.ArrayType{Elt: l.typ(elem)}}
+		for _, a := range e.Args[1:] {
+			list.Elts = append(list.Elts, l.exprTo(a, elem))
+		}
+		return spread(call(ast.NewIdent("append"), args[0], list), true)
 	}
 	for _, a := range e.Args[1:] {
 		switch {

@@ -295,10 +295,22 @@ func (l *lowerer) callFun(fun ast.Expr, args []ast.Expr, sig *types.Signature) *
 		}
 	}
 	x := l.expr(fun)
-	if _, ok := fun.(*ast.FuncLit); ok {
+	switch fun.(type) {
+	case *ast.FuncLit:
 		x = paren(x)
+	case *ast.CallExpr, *ast.TypeAssertExpr:
+		return l.callResult(x, args, sig)
 	}
 	return call(x, args...)
+}
+
+// callResult calls what a call gave, by way of a variable: the interpreter cannot call a result in place.
+func (l *lowerer) callResult(x ast.Expr, args []ast.Expr, sig *types.Signature) *ast.CallExpr {
+	f := l.temp("f")
+	ft := l.funcType(sig)
+	get := &ast.FuncLit{Type: &ast.FuncType{Params: &ast.FieldList{}, Results: &ast.FieldList{List: []*ast.Field{{Type: ft}}}},
+		Body: &ast.BlockStmt{List: []ast.Stmt{varStmt(f, ft, x), &ast.ReturnStmt{Results: []ast.Expr{ast.NewIdent(f)}}}}}
+	return call(call(paren(get)), args...)
 }
 
 // argBoxing says how values of cell types go to an any of a compiled function.

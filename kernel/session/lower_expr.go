@@ -113,7 +113,7 @@ func (l *lowerer) binary(e *ast.BinaryExpr) ast.Expr {
 	case token.EQL, token.NEQ:
 		return l.comparison(e)
 	case token.SHL, token.SHR:
-		return paren(&ast.BinaryExpr{X: l.shifted(e), Op: e.Op, Y: l.expr(e.Y)})
+		return paren(&ast.BinaryExpr{X: l.shifted(e), Op: e.Op, Y: l.shiftCount(e.Y)})
 	case token.LAND, token.LOR:
 		return paren(&ast.BinaryExpr{X: l.expr(e.X), Op: e.Op, Y: l.expr(e.Y)})
 	}
@@ -122,6 +122,17 @@ func (l *lowerer) binary(e *ast.BinaryExpr) ast.Expr {
 		t = l.typeOf(e.Y)
 	}
 	return paren(&ast.BinaryExpr{X: l.exprTo(e.X, t), Op: e.Op, Y: l.exprTo(e.Y, t)})
+}
+
+// shiftCount lowers the right operand of a shift; a constant may be written as a float or complex.
+func (l *lowerer) shiftCount(e ast.Expr) ast.Expr {
+	if tv := l.u.info.Types[e]; tv.Value != nil {
+		return call(ast.NewIdent("uint"), literal(tv.Value, types.Typ[types.Uint]))
+	}
+	if t := l.typeOf(e); isUntyped(t) {
+		return call(ast.NewIdent("uint"), l.expr(e))
+	}
+	return l.expr(e)
 }
 
 // shifted lowers the left operand of a shift, whose type is that of the whole.
@@ -177,11 +188,18 @@ func (l *lowerer) nilComparison(e *ast.BinaryExpr, x, y types.Type) ast.Expr {
 	if isNil(x) {
 		v, t = e.Y, y
 	}
+	return negate(l.isNil(l.expr(v), t), e.Op)
+}
+
+// isNil compares a lowered value with nil.
+func (l *lowerer) isNil(x ast.Expr, t types.Type) ast.Expr {
 	switch t.Underlying().(type) {
-	case *types.Signature, *types.Interface:
-		return negate(hostCall("IsNil", l.expr(v)), e.Op)
+	case *types.Signature:
+		return hostCall("NilFunc", x)
+	case *types.Interface:
+		return hostCall("IsNil", x)
 	}
-	return paren(&ast.BinaryExpr{X: l.expr(v), Op: e.Op, Y: ast.NewIdent("nil")})
+	return paren(&ast.BinaryExpr{X: x, Op: token.EQL, Y: ast.NewIdent("nil")})
 }
 
 func (l *lowerer) unary(e *ast.UnaryExpr) ast.Expr {
@@ -205,6 +223,9 @@ func (l *lowerer) index(e *ast.IndexExpr) ast.Expr {
 	t := l.typeOf(e.X)
 	switch u := t.Underlying().(type) {
 	case *types.Map:
+		if isNil(l.typeOf(e.Index)) && !types.IsInterface(u.Key()) {
+			return &ast.IndexExpr{X: l.expr(e.X), Index: l.zero(u.Key())}
+		}
 		return &ast.IndexExpr{X: l.expr(e.X), Index: l.exprTo(e.Index, u.Key())}
 	case *types.Pointer:
 		return &ast.IndexExpr{X: paren(&ast.StarExpr{X: l.expr(e.X)}), Index: l.expr(e.Index)}
@@ -320,7 +341,16 @@ func (l *lowerer) assertion(e *ast.TypeAssertExpr) ast.Expr {
 	if types.IsInterface(t) {
 		return l.toInterface(x, t)
 	}
-	return &ast.TypeAssertExpr{X: x, Type: l.typ(t)}
+	if _, ok := t.Underlying().(*types.Basic); ok {
+		return &ast.TypeAssertExpr{X: x, Type: l.typ(t)}
+	}
+	v := l.temp("x")
+	return closure([]ast.Expr{l.typ(t)}, varStmt(v, l.typ(t), nil), l.unpack(x, v), &ast.ReturnStmt{Results: []ast.Expr{ast.NewIdent(v)}})
+}
+
+// unpack stores what the host's assertion gave into a variable. The interpreter's own assertion fails for some types.
+func (l *lowerer) unpack(x ast.Expr, name string) ast.Stmt {
+	return exprStmt(hostCall("Unpack", x, &ast.UnaryExpr{Op: token.AND, X: ast.NewIdent(name)}))
 }
 
 // opened lowers an interface value to the dynamic form.

@@ -252,7 +252,7 @@ func (l *lowerer) rangeStmt(s *ast.RangeStmt, name string) []ast.Stmt {
 	switch u := t.(type) {
 	case *types.Basic:
 		if u.Info()&types.IsString != 0 {
-			out = l.rangeNative(s, name, types.Typ[types.Int], types.Typ[types.Rune])
+			out = l.rangeString(s, name)
 		} else {
 			out = l.rangeInt(s, name)
 		}
@@ -320,7 +320,7 @@ func (l *lowerer) rangeList(s *ast.RangeStmt, name string, elem types.Type, arra
 		array = true
 		lt = types.NewPointer(p.Elem())
 	}
-	if s.Value == nil && array {
+	if (s.Value == nil || isBlank(s.Value)) && array {
 		// only the length counts, which needs no copy
 		size := arrayLen(l.typeOf(s.X))
 		head = append(head, varStmt(n, ast.NewIdent("int"), intLit(size)))
@@ -357,6 +357,43 @@ func (l *lowerer) rangeNative(s *ast.RangeStmt, name string, kt, vt types.Type) 
 	out.Body = &ast.BlockStmt{List: body}
 	head := varStmt(x, l.typ(types.Default(l.typeOf(s.X))), l.expr(s.X))
 	return scoped([]ast.Stmt{head, label(name, out)})
+}
+
+// rangeString lowers range over the characters of a string.
+func (l *lowerer) rangeString(s *ast.RangeStmt, name string) []ast.Stmt {
+	x, i, r, w := l.temp("x"), l.temp("i"), l.temp("r"), l.temp("w")
+	str := types.Typ[types.String]
+	head := []ast.Stmt{
+		varStmt(x, ast.NewIdent("string"), l.conversionTo(s.X, str)),
+		varStmt(i, ast.NewIdent("int"), intLit(0)),
+		varStmt(w, ast.NewIdent("int"), intLit(1)),
+	}
+	at := &ast.IndexExpr{X: ast.NewIdent(x), Index: ast.NewIdent(i)}
+	body := []ast.Stmt{
+		varStmt(r, ast.NewIdent("rune"), call(ast.NewIdent("rune"), at)),
+		assign(ast.NewIdent(w), intLit(1)),
+		&ast.IfStmt{Cond: &ast.BinaryExpr{X: ast.NewIdent(r), Op: token.GEQ, Y: intLit(0x80)}, Body: &ast.BlockStmt{List: []ast.Stmt{
+			&ast.AssignStmt{Lhs: []ast.Expr{ast.NewIdent(r), ast.NewIdent(w)}, Tok: token.ASSIGN,
+				Rhs: []ast.Expr{hostCall("Rune", ast.NewIdent(x), ast.NewIdent(i))}}}}},
+	}
+	body = append(body, l.bindRange(s.Key, s.Tok, ast.NewIdent(i), types.Typ[types.Int])...)
+	body = append(body, l.bindRange(s.Value, s.Tok, ast.NewIdent(r), types.Typ[types.Rune])...)
+	body = append(body, l.block(s.Body).List...)
+	loop := &ast.ForStmt{
+		Cond: &ast.BinaryExpr{X: ast.NewIdent(i), Op: token.LSS, Y: call(ast.NewIdent("len"), ast.NewIdent(x))},
+		Post: assign(ast.NewIdent(i), &ast.BinaryExpr{X: ast.NewIdent(i), Op: token.ADD, Y: ast.NewIdent(w)}),
+		Body: &ast.BlockStmt{List: body},
+	}
+	return scoped(append(head, label(name, loop)))
+}
+
+// conversionTo lowers an expression and converts it to a basic type.
+func (l *lowerer) conversionTo(e ast.Expr, t *types.Basic) ast.Expr {
+	x := l.expr(e)
+	if types.Identical(l.typeOf(e), t) || isUntyped(l.typeOf(e)) {
+		return x
+	}
+	return call(ast.NewIdent(t.Name()), x)
 }
 
 // rangeChan lowers range over a channel.
@@ -421,7 +458,7 @@ func (l *lowerer) caseCond(tag ast.Expr, tagType types.Type, e ast.Expr) ast.Exp
 	et := l.typeOf(e)
 	switch {
 	case isNil(et):
-		return hostCall("IsNil", tag)
+		return l.isNil(tag, tagType)
 	case types.IsInterface(tagType) || types.IsInterface(et):
 		anyT := types.NewInterfaceType(nil, nil)
 		return hostCall("Equal", l.convert(tag, tagType, anyT), l.exprTo(e, anyT))
@@ -491,15 +528,14 @@ func (l *lowerer) clauseVar(v *types.Var, n string, xt types.Type) []ast.Stmt {
 			varStmt(name, l.typ(t), nil),
 			&ast.AssignStmt{Lhs: []ast.Expr{ast.NewIdent(raw), ast.NewIdent(ok)}, Tok: token.DEFINE,
 				Rhs: []ast.Expr{hostCall("TryAssert", intLit(l.runtimeType(t).id), ast.NewIdent(n))}},
-			&ast.IfStmt{Cond: ast.NewIdent(ok), Body: &ast.BlockStmt{List: []ast.Stmt{
-				assign(ast.NewIdent(name), l.unpacked(raw, t))}}},
+			&ast.IfStmt{Cond: ast.NewIdent(ok), Body: &ast.BlockStmt{List: l.unpacked(name, raw, t)}},
 		}
 	}
 	raw := l.temp("x")
-	return []ast.Stmt{
+	return append([]ast.Stmt{
 		define(raw, hostCall("Assert", intLit(l.runtimeType(t).id), ast.NewIdent(n))),
-		varStmt(name, l.typ(t), l.unpacked(raw, t)),
-	}
+		varStmt(name, l.typ(t), nil),
+	}, l.unpacked(name, raw, t)...)
 }
 
 // selectStmt lowers a select.

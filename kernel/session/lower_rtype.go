@@ -237,6 +237,9 @@ func (e *emitter) registerMethods() {
 	for {
 		before := len(e.registered)
 		for _, r := range e.pendingTypes {
+			if types.IsInterface(r) {
+				continue
+			}
 			e.function(nil).registerType(r)
 		}
 		if len(e.registered) == before {

@@ -319,10 +319,11 @@ func (l *lowerer) settled(e ast.Expr, tok token.Token) ([]ast.Stmt, ast.Expr) {
 // assignMany lowers one expression that gives several values.
 func (l *lowerer) assignMany(s *ast.AssignStmt) []ast.Stmt {
 	rhs := ast.Unparen(s.Rhs[0])
+	before, places := l.places(s.Lhs, s.Tok)
 	if inner, n, ok := mustCall(rhs); ok {
-		return l.mustStatement(inner, n, func(values []string) []ast.Stmt {
-			return l.putAll(s.Lhs, values, l.resultTypes(inner), s.Tok)
-		})
+		return append(before, l.mustStatement(inner, n, func(values []string) []ast.Stmt {
+			return l.putAll(s.Lhs, places, values, l.resultTypes(inner), s.Tok)
+		})...)
 	}
 	if c, ok := rhs.(*ast.CallExpr); ok {
 		rts := l.resultTypes(c)
@@ -330,9 +331,21 @@ func (l *lowerer) assignMany(s *ast.AssignStmt) []ast.Stmt {
 		for _, n := range names {
 			stmt.Lhs = append(stmt.Lhs, ast.NewIdent(n))
 		}
-		return append([]ast.Stmt{stmt}, l.putAll(s.Lhs, names, rts, s.Tok)...)
+		return append(append(before, stmt), l.putAll(s.Lhs, places, names, rts, s.Tok)...)
 	}
-	return l.commaOk(s.Lhs, rhs, s.Tok)
+	return append(before, l.commaOk(s.Lhs, places, rhs, s.Tok)...)
+}
+
+// places evaluates the operands of what several values are assigned to. A plain variable stays as it is.
+func (l *lowerer) places(lhs []ast.Expr, tok token.Token) (before []ast.Stmt, places []ast.Expr) {
+	places = make([]ast.Expr, len(lhs))
+	for i, e := range lhs {
+		if _, ident := ast.Unparen(e).(*ast.Ident); !ident {
+			stmts, x := l.settled(e, tok)
+			before, places[i] = append(before, stmts...), x
+		}
+	}
+	return before, places
 }
 
 func (l *lowerer) temps(prefix string, n int) []string {
@@ -343,16 +356,24 @@ func (l *lowerer) temps(prefix string, n int) []string {
 	return out
 }
 
-func (l *lowerer) putAll(lhs []ast.Expr, values []string, ts []types.Type, tok token.Token) []ast.Stmt {
+func (l *lowerer) putAll(lhs, places []ast.Expr, values []string, ts []types.Type, tok token.Token) []ast.Stmt {
 	var out []ast.Stmt
-	for i, e := range lhs {
-		out = append(out, l.put(e, ast.NewIdent(values[i]), ts[i], tok)...)
+	for i := range lhs {
+		out = append(out, l.putAt(lhs[i], places[i], ast.NewIdent(values[i]), ts[i], tok)...)
 	}
 	return out
 }
 
+// putAt is put for a place that may have been evaluated already.
+func (l *lowerer) putAt(lhs, place, x ast.Expr, from types.Type, tok token.Token) []ast.Stmt {
+	if place == nil {
+		return l.put(lhs, x, from, tok)
+	}
+	return []ast.Stmt{assign(place, l.convert(x, from, l.typeOf(lhs)))}
+}
+
 // commaOk lowers v, ok of a map, a channel or a type assertion.
-func (l *lowerer) commaOk(lhs []ast.Expr, rhs ast.Expr, tok token.Token) []ast.Stmt {
+func (l *lowerer) commaOk(lhs, places []ast.Expr, rhs ast.Expr, tok token.Token) []ast.Stmt {
 	v, ok := l.temp("v"), l.temp("ok")
 	t := l.typeOf(rhs)
 	if tuple, is := t.(*types.Tuple); is {
@@ -366,8 +387,8 @@ func (l *lowerer) commaOk(lhs []ast.Expr, rhs ast.Expr, tok token.Token) []ast.S
 	default:
 		out = []ast.Stmt{&ast.AssignStmt{Lhs: []ast.Expr{ast.NewIdent(v), ast.NewIdent(ok)}, Tok: token.DEFINE, Rhs: []ast.Expr{l.twoValued(rhs)}}}
 	}
-	out = append(out, l.put(lhs[0], ast.NewIdent(v), t, tok)...)
-	return append(out, l.put(lhs[1], ast.NewIdent(ok), types.Typ[types.Bool], tok)...)
+	out = append(out, l.putAt(lhs[0], places[0], ast.NewIdent(v), t, tok)...)
+	return append(out, l.putAt(lhs[1], places[1], ast.NewIdent(ok), types.Typ[types.Bool], tok)...)
 }
 
 // twoValued lowers the right side of v, ok := without parentheses around it, as the interpreter wants it.
@@ -388,19 +409,18 @@ func (l *lowerer) assertOk(e *ast.TypeAssertExpr, v, ok string, t types.Type) []
 	get := &ast.AssignStmt{Lhs: []ast.Expr{ast.NewIdent(raw), ast.NewIdent(ok)}, Tok: token.DEFINE,
 		Rhs: []ast.Expr{hostCall("TryAssert", intLit(l.runtimeType(t).id), l.opened(e.X))}}
 	out := []ast.Stmt{get, varStmt(v, l.typ(t), nil)}
-	return append(out, &ast.IfStmt{Cond: ast.NewIdent(ok), Body: &ast.BlockStmt{List: []ast.Stmt{
-		assign(ast.NewIdent(v), l.unpacked(raw, t))}}})
+	return append(out, &ast.IfStmt{Cond: ast.NewIdent(ok), Body: &ast.BlockStmt{List: l.unpacked(v, raw, t)}})
 }
 
-// unpacked turns what the host's assertion gave into a value of the type.
-func (l *lowerer) unpacked(raw string, t types.Type) ast.Expr {
-	if types.IsInterface(t) && l.dynamic(t) {
-		return ast.NewIdent(raw)
+// unpacked stores what the host's assertion gave into a variable of the type.
+func (l *lowerer) unpacked(name, raw string, t types.Type) []ast.Stmt {
+	switch {
+	case types.IsInterface(t) && l.dynamic(t):
+		return []ast.Stmt{assign(ast.NewIdent(name), ast.NewIdent(raw))}
+	case types.IsInterface(t):
+		return []ast.Stmt{assign(ast.NewIdent(name), l.toInterface(ast.NewIdent(raw), t))}
 	}
-	if types.IsInterface(t) {
-		return l.toInterface(ast.NewIdent(raw), t)
-	}
-	return &ast.TypeAssertExpr{X: ast.NewIdent(raw), Type: l.typ(t)}
+	return []ast.Stmt{l.unpack(ast.NewIdent(raw), name)}
 }
 
 var opOf = map[token.Token]token.Token{
@@ -414,11 +434,11 @@ func (l *lowerer) opAssign(s *ast.AssignStmt) []ast.Stmt {
 	t := l.typeOf(s.Lhs[0])
 	var y ast.Expr
 	if s.Tok == token.SHL_ASSIGN || s.Tok == token.SHR_ASSIGN {
-		y = l.expr(s.Rhs[0])
+		y = l.shiftCount(s.Rhs[0])
 	} else {
 		y = l.exprTo(s.Rhs[0], t)
 	}
-	if simplePlace(s.Lhs[0]) {
+	if _, ident := ast.Unparen(s.Lhs[0]).(*ast.Ident); ident || simplePlace(s.Lhs[0]) && simplePlace(s.Rhs[0]) {
 		x := l.lhs(s.Lhs[0])
 		return []ast.Stmt{assign(x, &ast.BinaryExpr{X: x, Op: opOf[s.Tok], Y: paren(y)})}
 	}
@@ -520,10 +540,18 @@ func (l *lowerer) returnStmt(s *ast.ReturnStmt) []ast.Stmt {
 		}
 	}
 	ret := &ast.ReturnStmt{}
+	var before []ast.Stmt
 	for i, r := range s.Results {
-		ret.Results = append(ret.Results, l.exprTo(r, l.results[i]))
+		x := l.exprTo(r, l.results[i])
+		if len(l.named) > 1 && l.u.info.Types[r].Value == nil {
+			// All results are evaluated before the named ones change.
+			n := l.temp("r")
+			before = append(before, varStmt(n, l.typ(l.results[i]), x))
+			x = ast.NewIdent(n)
+		}
+		ret.Results = append(ret.Results, x)
 	}
-	return []ast.Stmt{ret}
+	return append(before, ret)
 }
 
 func (l *lowerer) returnValues(names []string, ts []types.Type) ast.Stmt {

@@ -246,6 +246,7 @@ func (l *lowerer) ownType(t *types.Named) string {
 		key := l.argsKey(t.TypeArgs())
 		known := d.instances[key]
 		if known != "" {
+			l.pendingTypes = append(l.pendingTypes, l.sub(t).(*types.Named))
 			return known
 		}
 		name = d.internal() + mark + "i" + strconv.Itoa(l.u.s.nextIndex())
@@ -273,6 +274,9 @@ func (l *lowerer) ownType(t *types.Named) string {
 func (l *lowerer) localType(t *types.Named) string {
 	key := localKey{t.Origin().Obj(), l.argsKey(t.TypeArgs())}
 	for _, a := range sortedParams(l.subst) {
+		if sc := a.Obj().Parent(); sc == nil || !sc.Contains(t.Origin().Obj().Pos()) {
+			continue // not declared within that function
+		}
 		key.args += "/" + l.typeKey(l.subst[a])
 	}
 	if n := l.localNames[key]; n != "" {

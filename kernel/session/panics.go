@@ -33,6 +33,9 @@ type interruption struct{}
 
 func (interruption) Error() string { return "interrupted" }
 
+// quietEnd is the panic with which os.Exit(0) ends a cell.
+type quietEnd struct{}
+
 var errInterrupted = interruption{}
 
 // userPanic carries the value of a panic of the cell, so that one of nil and plain ones are told from faults of the interpreter.

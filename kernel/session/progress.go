@@ -31,7 +31,7 @@ type progressMeter struct {
 
 // Progress implements continuation.Observer for the models of the session.
 func (s *Session) Progress(p continuation.Progress) {
-	if r := s.runningRun(); r != nil {
+	if r := s.runningRun(); r != nil && !s.still {
 		r.progress.tell(p)
 	}
 }
@@ -64,6 +64,7 @@ func (m *progressMeter) tell(p continuation.Progress) {
 func (m *progressMeter) show(p continuation.Progress) {
 	m.pending = nil
 	b := display.Render(p)
+	b.Metadata = map[string]any{"brinkline": map[string]any{"progress": true}} // tells it from results
 	if m.id == "" {
 		m.id = fmt.Sprintf("progress-%d-%d", time.Now().UnixNano(), displayCount.Add(1))
 		m.run.out.Display(b, m.id)

@@ -123,9 +123,7 @@ func (b box) bind(m *rmethod) reflect.Value {
 		}
 		recv = recv.Elem()
 	}
-	if recv.Type() != ft.In(0) && recv.CanConvert(ft.In(0)) {
-		recv = recv.Convert(ft.In(0))
-	}
+	recv = adapt(recv, ft.In(0))
 	in := make([]reflect.Type, ft.NumIn()-1)
 	for i := range in {
 		in[i] = ft.In(i + 1)

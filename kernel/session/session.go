@@ -18,7 +18,11 @@ import (
 )
 
 // Options are the settings of a session.
-type Options struct{}
+type Options struct {
+	// Still leaves out the live displays of long work. Whether one appears depends on how fast the machine is, so a run that
+	// nobody watches is still: its notebook has the same bytes everywhere.
+	Still bool
+}
 
 // An Output takes what a cell shows while it runs. It must be safe for concurrent use.
 type Output interface {
@@ -49,6 +53,7 @@ type Result struct {
 
 // A Session holds what cells have defined. Run takes one cell at a time; the other methods may be called while it runs.
 type Session struct {
+	still    bool // no live displays
 	running  sync.Mutex
 	tab      atomic.Pointer[table]
 	importer *export.Importer
@@ -75,8 +80,9 @@ type Session struct {
 }
 
 // New starts a session.
-func New(Options) (*Session, error) {
+func New(o Options) (*Session, error) {
 	s := &Session{
+		still: o.Still,
 		importer: export.NewImporter(), rtypes: newRtypes(), override: map[string]reflect.Value{}, offered: map[string]bool{},
 		bound:  map[string]reflect.Value{},
 		strays: map[int64]*run{}, knownSet: map[string]bool{}, modelled: map[string]modelled{}, shorts: map[string]string{},

@@ -103,6 +103,9 @@ func (u *unit) enter(d *def) {
 	u.fresh[d] = true
 	u.next.put(d)
 	u.changed[d.key()] = true
+	if t := u.next.defs[d.recv]; d.kind == methodDef && t != nil && t.generic {
+		u.changed[d.recv] = true // instances get their methods where they are used
+	}
 	for _, n := range d.names {
 		if d.kind != methodDef {
 			u.changed[n] = true

@@ -12,6 +12,7 @@ func init() {
 		return map[string]reflect.Value{
 			"Balance":            reflect.ValueOf(brinkline_continuation.Balance),
 			"Bound":              reflect.ValueOf(brinkline_continuation.Bound),
+			"Box":                reflect.ValueOf((*brinkline_continuation.Box)(nil)),
 			"Branch":             reflect.ValueOf((*brinkline_continuation.Branch)(nil)),
 			"BranchPoint":        reflect.ValueOf((*brinkline_continuation.BranchPoint)(nil)),
 			"Derivatives":        reflect.ValueOf((*brinkline_continuation.Derivatives)(nil)),
@@ -20,11 +21,13 @@ func init() {
 			"_Differentiator":    reflect.ValueOf((*wrap_brinkline_continuation_Differentiator)(nil)),
 			"DomainError":        reflect.ValueOf((*brinkline_continuation.DomainError)(nil)),
 			"Downward":           reflect.ValueOf(brinkline_continuation.Downward),
+			"Effort":             reflect.ValueOf(brinkline_continuation.Effort),
 			"End":                reflect.ValueOf((*brinkline_continuation.End)(nil)),
 			"EndReason":          reflect.ValueOf((*brinkline_continuation.EndReason)(nil)),
 			"ErrInterrupted":     reflect.ValueOf(&brinkline_continuation.ErrInterrupted).Elem(),
 			"Evaluator":          reflect.ValueOf((*brinkline_continuation.Evaluator)(nil)),
 			"_Evaluator":         reflect.ValueOf((*wrap_brinkline_continuation_Evaluator)(nil)),
+			"Event":              reflect.ValueOf((*brinkline_continuation.Event)(nil)),
 			"Fold":               reflect.ValueOf((*brinkline_continuation.Fold)(nil)),
 			"FollowOption":       reflect.ValueOf((*brinkline_continuation.FollowOption)(nil)),
 			"FormatUncertain":    reflect.ValueOf(brinkline_continuation.FormatUncertain),
@@ -32,10 +35,16 @@ func init() {
 			"LandAt":             reflect.ValueOf(brinkline_continuation.LandAt),
 			"Local":              reflect.ValueOf(brinkline_continuation.Local),
 			"LocalAutomatic":     reflect.ValueOf(brinkline_continuation.LocalAutomatic),
+			"Locus":              reflect.ValueOf((*brinkline_continuation.Locus)(nil)),
+			"LocusPoint":         reflect.ValueOf((*brinkline_continuation.LocusPoint)(nil)),
+			"LocusSpecial":       reflect.ValueOf((*brinkline_continuation.LocusSpecial)(nil)),
 			"Margin":             reflect.ValueOf((*brinkline_continuation.Margin)(nil)),
+			"Mark":               reflect.ValueOf(brinkline_continuation.Mark),
 			"MaxSteps":           reflect.ValueOf(brinkline_continuation.MaxSteps),
 			"MaxTurn":            reflect.ValueOf(brinkline_continuation.MaxTurn),
 			"Model":              reflect.ValueOf((*brinkline_continuation.Model)(nil)),
+			"MostStates":         reflect.ValueOf(brinkline_continuation.MostStates),
+			"Multiple":           reflect.ValueOf((*brinkline_continuation.Multiple)(nil)),
 			"Named":              reflect.ValueOf(brinkline_continuation.Named),
 			"Natural":            reflect.ValueOf(brinkline_continuation.Natural),
 			"NewModel":           reflect.ValueOf(brinkline_continuation.NewModel),
@@ -46,26 +55,39 @@ func init() {
 			"Point":              reflect.ValueOf((*brinkline_continuation.Point)(nil)),
 			"Progress":           reflect.ValueOf((*brinkline_continuation.Progress)(nil)),
 			"Quantity":           reflect.ValueOf(brinkline_continuation.Quantity),
+			"Reads":              reflect.ValueOf(brinkline_continuation.Reads),
+			"Reduced":            reflect.ValueOf((*brinkline_continuation.Reduced)(nil)),
 			"Rejection":          reflect.ValueOf((*brinkline_continuation.Rejection)(nil)),
 			"Sensitivities":      reflect.ValueOf((*brinkline_continuation.Sensitivities)(nil)),
 			"Sensitivity":        reflect.ValueOf((*brinkline_continuation.Sensitivity)(nil)),
+			"Sequential":         reflect.ValueOf(brinkline_continuation.Sequential),
 			"Special":            reflect.ValueOf((*brinkline_continuation.Special)(nil)),
 			"States":             reflect.ValueOf(brinkline_continuation.States),
 			"StepBetween":        reflect.ValueOf(brinkline_continuation.StepBetween),
 			"StepLength":         reflect.ValueOf(brinkline_continuation.StepLength),
+			"StopAt":             reflect.ValueOf(brinkline_continuation.StopAt),
 			"StopAtFold":         reflect.ValueOf(brinkline_continuation.StopAtFold),
 			"StopAtSpecial":      reflect.ValueOf(brinkline_continuation.StopAtSpecial),
 			"Stretch":            reflect.ValueOf((*brinkline_continuation.Stretch)(nil)),
+			"Survey":             reflect.ValueOf((*brinkline_continuation.Survey)(nil)),
+			"SurveyOption":       reflect.ValueOf((*brinkline_continuation.SurveyOption)(nil)),
+			"ThirdOrder":         reflect.ValueOf((*brinkline_continuation.ThirdOrder)(nil)),
+			"_ThirdOrder":        reflect.ValueOf((*wrap_brinkline_continuation_ThirdOrder)(nil)),
 			"Tolerance":          reflect.ValueOf(brinkline_continuation.Tolerance),
+			"TriedStarts":        reflect.ValueOf((*brinkline_continuation.TriedStarts)(nil)),
 			"Until":              reflect.ValueOf(brinkline_continuation.Until),
 			"Upward":             reflect.ValueOf(brinkline_continuation.Upward),
 			"Variable":           reflect.ValueOf((*brinkline_continuation.Variable)(nil)),
 			"Walk":               reflect.ValueOf((*brinkline_continuation.Walk)(nil)),
 			"WithContext":        reflect.ValueOf(brinkline_continuation.WithContext),
 			"WithDerivatives":    reflect.ValueOf(brinkline_continuation.WithDerivatives),
+			"WithEigenvalues":    reflect.ValueOf(brinkline_continuation.WithEigenvalues),
 			"WithObserver":       reflect.ValueOf(brinkline_continuation.WithObserver),
+			"WithSource":         reflect.ValueOf(brinkline_continuation.WithSource),
+			"WithSyntax":         reflect.ValueOf(brinkline_continuation.WithSyntax),
 			"Within":             reflect.ValueOf(brinkline_continuation.Within),
 			"WithoutEigenvalues": reflect.ValueOf(brinkline_continuation.WithoutEigenvalues),
+			"Workers":            reflect.ValueOf(brinkline_continuation.Workers),
 		}
 	}
 }
@@ -137,3 +159,14 @@ func (w wrap_brinkline_continuation_Observer) Progress(a0 brinkline_continuation
 }
 
 func (w wrap_brinkline_continuation_Observer) CellValue() any { return w.IValue }
+
+type wrap_brinkline_continuation_ThirdOrder struct {
+	IValue any
+	WThird func(x []float64, p []float64, j int, a []float64, out []float64) error
+}
+
+func (w wrap_brinkline_continuation_ThirdOrder) Third(a0 []float64, a1 []float64, a2 int, a3 []float64, a4 []float64) error {
+	return w.WThird(a0, a1, a2, a3, a4)
+}
+
+func (w wrap_brinkline_continuation_ThirdOrder) CellValue() any { return w.IValue }
