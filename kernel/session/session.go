@@ -82,7 +82,7 @@ type Session struct {
 // New starts a session.
 func New(o Options) (*Session, error) {
 	s := &Session{
-		still: o.Still,
+		still:    o.Still,
 		importer: export.NewImporter(), rtypes: newRtypes(), override: map[string]reflect.Value{}, offered: map[string]bool{},
 		bound:  map[string]reflect.Value{},
 		strays: map[int64]*run{}, knownSet: map[string]bool{}, modelled: map[string]modelled{}, shorts: map[string]string{},

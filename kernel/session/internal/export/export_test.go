@@ -68,7 +68,7 @@ func surface(t *testing.T, pkg *types.Package) string {
 		if !obj.Exported() {
 			continue
 		}
-		b.WriteString(types.ObjectString(obj, (*types.Package).Path) + "\n")
+		b.WriteString(declaration(obj) + "\n")
 		ms := types.NewMethodSet(types.NewPointer(obj.Type()))
 		for i := range ms.Len() {
 			if m := ms.At(i).Obj(); m.Exported() {
@@ -77,6 +77,21 @@ func surface(t *testing.T, pkg *types.Package) string {
 		}
 	}
 	return b.String()
+}
+
+// declaration writes an object; of a struct only the fields that a cell can see.
+func declaration(obj types.Object) string {
+	st, ok := obj.Type().Underlying().(*types.Struct)
+	if _, isType := obj.(*types.TypeName); !isType || !ok {
+		return types.ObjectString(obj, (*types.Package).Path)
+	}
+	out := "type " + obj.Name() + " struct"
+	for f := range st.Fields() {
+		if f.Exported() {
+			out += "; " + types.ObjectString(f, (*types.Package).Path)
+		}
+	}
+	return out
 }
 
 func firstDifference(a, b string) string {

@@ -12,7 +12,6 @@ func init() {
 		return map[string]reflect.Value{
 			"Balance":            reflect.ValueOf(brinkline_continuation.Balance),
 			"Bound":              reflect.ValueOf(brinkline_continuation.Bound),
-			"Box":                reflect.ValueOf((*brinkline_continuation.Box)(nil)),
 			"Branch":             reflect.ValueOf((*brinkline_continuation.Branch)(nil)),
 			"BranchPoint":        reflect.ValueOf((*brinkline_continuation.BranchPoint)(nil)),
 			"Derivatives":        reflect.ValueOf((*brinkline_continuation.Derivatives)(nil)),
@@ -21,7 +20,6 @@ func init() {
 			"_Differentiator":    reflect.ValueOf((*wrap_brinkline_continuation_Differentiator)(nil)),
 			"DomainError":        reflect.ValueOf((*brinkline_continuation.DomainError)(nil)),
 			"Downward":           reflect.ValueOf(brinkline_continuation.Downward),
-			"Effort":             reflect.ValueOf(brinkline_continuation.Effort),
 			"End":                reflect.ValueOf((*brinkline_continuation.End)(nil)),
 			"EndReason":          reflect.ValueOf((*brinkline_continuation.EndReason)(nil)),
 			"ErrInterrupted":     reflect.ValueOf(&brinkline_continuation.ErrInterrupted).Elem(),
@@ -43,7 +41,6 @@ func init() {
 			"MaxSteps":           reflect.ValueOf(brinkline_continuation.MaxSteps),
 			"MaxTurn":            reflect.ValueOf(brinkline_continuation.MaxTurn),
 			"Model":              reflect.ValueOf((*brinkline_continuation.Model)(nil)),
-			"MostStates":         reflect.ValueOf(brinkline_continuation.MostStates),
 			"Multiple":           reflect.ValueOf((*brinkline_continuation.Multiple)(nil)),
 			"Named":              reflect.ValueOf(brinkline_continuation.Named),
 			"Natural":            reflect.ValueOf(brinkline_continuation.Natural),
@@ -60,7 +57,6 @@ func init() {
 			"Rejection":          reflect.ValueOf((*brinkline_continuation.Rejection)(nil)),
 			"Sensitivities":      reflect.ValueOf((*brinkline_continuation.Sensitivities)(nil)),
 			"Sensitivity":        reflect.ValueOf((*brinkline_continuation.Sensitivity)(nil)),
-			"Sequential":         reflect.ValueOf(brinkline_continuation.Sequential),
 			"Special":            reflect.ValueOf((*brinkline_continuation.Special)(nil)),
 			"States":             reflect.ValueOf(brinkline_continuation.States),
 			"StepBetween":        reflect.ValueOf(brinkline_continuation.StepBetween),
@@ -69,12 +65,9 @@ func init() {
 			"StopAtFold":         reflect.ValueOf(brinkline_continuation.StopAtFold),
 			"StopAtSpecial":      reflect.ValueOf(brinkline_continuation.StopAtSpecial),
 			"Stretch":            reflect.ValueOf((*brinkline_continuation.Stretch)(nil)),
-			"Survey":             reflect.ValueOf((*brinkline_continuation.Survey)(nil)),
-			"SurveyOption":       reflect.ValueOf((*brinkline_continuation.SurveyOption)(nil)),
 			"ThirdOrder":         reflect.ValueOf((*brinkline_continuation.ThirdOrder)(nil)),
 			"_ThirdOrder":        reflect.ValueOf((*wrap_brinkline_continuation_ThirdOrder)(nil)),
 			"Tolerance":          reflect.ValueOf(brinkline_continuation.Tolerance),
-			"TriedStarts":        reflect.ValueOf((*brinkline_continuation.TriedStarts)(nil)),
 			"Until":              reflect.ValueOf(brinkline_continuation.Until),
 			"Upward":             reflect.ValueOf(brinkline_continuation.Upward),
 			"Variable":           reflect.ValueOf((*brinkline_continuation.Variable)(nil)),
@@ -87,7 +80,6 @@ func init() {
 			"WithSyntax":         reflect.ValueOf(brinkline_continuation.WithSyntax),
 			"Within":             reflect.ValueOf(brinkline_continuation.Within),
 			"WithoutEigenvalues": reflect.ValueOf(brinkline_continuation.WithoutEigenvalues),
-			"Workers":            reflect.ValueOf(brinkline_continuation.Workers),
 		}
 	}
 }
