@@ -50,7 +50,7 @@ out; in cells tagged raises-exception an error is expected and the run goes on.`
 
 func sessions() headless.Kernel {
 	return headless.Kernel{
-		Start:    func() (headless.Executor, error) { return session.New(session.Options{}) },
+		Start:    func() (headless.Executor, error) { return session.New(session.Options{Still: true}) },
 		Language: kernel.LanguageInfo(),
 		Version:  kernel.Version,
 	}
