@@ -145,8 +145,15 @@ func basicName(t *types.Basic) string {
 	return types.Typ[d.Kind()].Name()
 }
 
-// chanDir: the interpreter mistakes directed channels in places, and the checker has seen to the direction.
-func chanDir(types.ChanDir) ast.ChanDir { return ast.SEND | ast.RECV }
+func chanDir(d types.ChanDir) ast.ChanDir {
+	switch d {
+	case types.SendOnly:
+		return ast.SEND
+	case types.RecvOnly:
+		return ast.RECV
+	}
+	return ast.SEND | ast.RECV
+}
 
 func (l *lowerer) funcType(t *types.Signature) *ast.FuncType {
 	params, results := &ast.FieldList{}, &ast.FieldList{}

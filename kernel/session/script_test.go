@@ -67,7 +67,12 @@ func transcript(res Result, out string) string {
 
 // TestScripts runs every script in testdata. A script is a txtar archive: files "cell" are run in order in one session, and the file
 // "want" after a cell says what it must show.
+//
+// With BRINKLINE_UPDATE=1 the wants are written from what comes out, to be read before they are kept.
 func TestScripts(t *testing.T) {
+	if os.Getenv("BRINKLINE_UPDATE") != "" {
+		updateScripts(t)
+	}
 	files, err := filepath.Glob("testdata/*.txtar")
 	if err != nil || len(files) == 0 {
 		t.Fatalf("no scripts: %v", err)
@@ -127,4 +132,47 @@ func runCell(s *Session, n int, source string) string {
 	out := &recorder{}
 	res := s.Run(ctx, Cell{ID: fmt.Sprint("c", n), Number: n, Source: strings.TrimSuffix(source, "\n")}, out)
 	return transcript(res, out.text())
+}
+
+// updateScripts writes what the cells give after each cell that has no want yet.
+func updateScripts(t *testing.T) {
+	files, _ := filepath.Glob("testdata/*.txtar")
+	for _, file := range files {
+		data, err := os.ReadFile(file)
+		if err != nil {
+			t.Fatal(err)
+		}
+		head, _, _ := strings.Cut("\n"+string(data), "\n== ")
+		out := strings.TrimPrefix(head, "\n")
+		if out != "" {
+			out += "\n"
+		}
+		for _, sc := range scripts(string(data)) {
+			out += "== " + strings.ReplaceAll(sc.name, "_", " ") + "\n" + filled(t, sc)
+		}
+		if err := os.WriteFile(file, []byte(out), 0o644); err != nil {
+			t.Fatal(err)
+		}
+	}
+}
+
+func filled(t *testing.T, sc script) string {
+	s, err := New(Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer s.Close()
+	n, out := 0, ""
+	for i, f := range sc.steps {
+		out += "-- " + f.Name + " --\n" + string(f.Data)
+		if f.Name != "cell" {
+			continue
+		}
+		n++
+		got := runCell(s, n, string(f.Data))
+		if i+1 >= len(sc.steps) || sc.steps[i+1].Name == "cell" {
+			out += "-- want --\n" + got
+		}
+	}
+	return out
 }
