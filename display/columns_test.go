@@ -30,3 +30,21 @@ func TestNumbersOfAColumnStandUnderEachOther(t *testing.T) {
 		})
 	}
 }
+
+func TestDecimalsOfAField(t *testing.T) {
+	type row struct {
+		Load   float64 `unit:"MW" decimals:"2"`
+		Digits int     `decimals:"2"`
+		Word   string  `decimals:"2"`
+	}
+	want := "" +
+		"Load (MW)  Digits  Word\n" +
+		"---------  ------  -----\n" +
+		"    10.07       3  today\n" +
+		"     0.00       3\n" +
+		"    -0.50       3"
+	got := Table([]row{{10.0704, 3, "today"}, {-0.001, 3, ""}, {-0.5, 3, ""}}).String()
+	if got != want {
+		t.Errorf("got\n%s\nwant\n%s", got, want)
+	}
+}

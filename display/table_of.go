@@ -5,6 +5,8 @@ import (
 	"math"
 	"reflect"
 	"sort"
+	"strconv"
+	"strings"
 
 	"gonum.org/v1/gonum/mat"
 
@@ -130,7 +132,7 @@ func structTable(list reflect.Value, elem reflect.Type) *Grid {
 	}
 	columns := make([][]string, len(fields))
 	for k, at := range fields {
-		columns[k] = fieldCells(list, at)
+		columns[k] = fieldCells(list, at, elem.Field(at).Tag.Get("decimals"))
 	}
 	for i := range list.Len() {
 		cells := make([]string, len(fields))
@@ -143,18 +145,38 @@ func structTable(list reflect.Value, elem reflect.Type) *Grid {
 }
 
 // fieldCells writes one field of all structs of a list; nil pointers leave a gap.
-func fieldCells(list reflect.Value, at int) []string {
+func fieldCells(list reflect.Value, at int, decimals string) []string {
 	cells, values := make([]string, list.Len()), make([]float64, list.Len())
+	fixed, err := strconv.Atoi(decimals)
 	for i := range cells {
 		values[i] = math.NaN()
-		if e := reflect.Indirect(list.Index(i)); e.IsValid() {
-			cells[i] = cellText(e.Field(at))
-			if f := e.Field(at); f.CanFloat() {
-				values[i] = f.Float()
-			}
+		e := reflect.Indirect(list.Index(i))
+		if !e.IsValid() {
+			continue
+		}
+		f := e.Field(at)
+		cells[i] = cellText(f)
+		if !f.CanFloat() {
+			continue
+		}
+		values[i] = f.Float()
+		if err == nil && isFinite(values[i]) {
+			cells[i] = rounded(values[i], min(max(fixed, 0), 15))
 		}
 	}
+	if err == nil {
+		return cells
+	}
 	return evened(cells, values)
+}
+
+// rounded writes a number with so many decimals, 0 without a sign.
+func rounded(v float64, decimals int) string {
+	text := strconv.FormatFloat(v, 'f', decimals, 64)
+	if strings.Trim(text, "-0.") == "" {
+		return strings.TrimPrefix(text, "-")
+	}
+	return text
 }
 
 func isNumber(k reflect.Kind) bool { return k >= reflect.Int && k <= reflect.Float64 }
