@@ -39,12 +39,12 @@ func WithSource(function string, texts ...string) Option {
 // the function, and the values of the variables outside of it that it reads.
 func WithSyntax(src *tape.Source) Option {
 	return func(m *Model) error {
-		known := src.Variable
-		e := &exact{m: m, src: src, named: map[string]reflect.Value{}}
+		own, known := *src, src.Variable // the caller may use src again
+		e := &exact{m: m, src: &own, named: map[string]reflect.Value{}}
 		if old, ok := m.der.(*exact); ok {
 			e.named = old.named
 		}
-		src.Variable = func(v *types.Var) (reflect.Value, error) {
+		own.Variable = func(v *types.Var) (reflect.Value, error) {
 			if at, ok := e.named[v.Name()]; ok {
 				return at, nil
 			}
@@ -152,29 +152,25 @@ func (e *exact) fits(p *tape.Program) error {
 }
 
 // at returns the program for a point, after its values were compared with those
-// of the function there.
-func (e *exact) at(x, p []float64, eq equations) (*tape.Program, error) {
+// of the function there. It returns nil where there is none; refused says that
+// there never will be one.
+func (e *exact) at(x, p []float64, eq equations) (q *tape.Program, refused bool) {
 	e.mu.Lock()
 	defer e.mu.Unlock()
 	if e.refusal != nil {
-		return nil, e.refusal
+		return nil, true
 	}
 	q, err := e.open().At(x, p)
 	if err != nil {
-		if _, refused := err.(*tape.Refusal); refused && e.family.Recorded() == 0 {
+		if _, refusal := err.(*tape.Refusal); refusal && e.family.Recorded() == 0 {
 			e.refusal = err
 		}
-		return nil, err
+		return nil, e.refusal != nil
 	}
-	if err := e.fits(q); err != nil {
-		return nil, err
+	if e.fits(q) != nil || !e.checked[q] && e.compare(q, x, p, eq) != nil {
+		return nil, true
 	}
-	if !e.checked[q] {
-		if err := e.compare(q, x, p, eq); err != nil {
-			return nil, err
-		}
-	}
-	return q, nil
+	return q, false
 }
 
 // compare refuses a tape whose values are not those of the function. On

@@ -42,9 +42,9 @@ func (d *exactRun) ready(x, p []float64) bool {
 
 // change goes over to the program that belongs to this point.
 func (d *exactRun) change(x, p []float64) bool {
-	q, err := d.e.at(x, p, d.plain)
-	if err != nil {
-		d.useless = d.e.refusal != nil
+	q, refused := d.e.at(x, p, d.plain)
+	if q == nil {
+		d.useless = refused
 		return false
 	}
 	if q != d.program {

@@ -243,10 +243,10 @@ func (d *deriver) chain(id int32, n node, t int32) int32 {
 	return d.mul(d.slope(id, n), t)
 }
 
-// complement is 1 - a² without cancellation near ±1.
+// complement is 1 - a² with one rounding, so that it does not cancel near ±1;
+// its derivatives do not cancel near 0 as those of (1-a)(1+a) would.
 func (d *deriver) complement(a int32) int32 {
-	one := d.constant(1)
-	return d.mul(d.sub(one, a), d.add(one, a))
+	return d.g.fma(d.neg(a), a, d.constant(1))
 }
 
 func (d *deriver) arcsine(a int32) int32 { return d.unary(opSqrt, d.complement(a)) }

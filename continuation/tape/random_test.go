@@ -388,7 +388,7 @@ func (w *writer) atom() string {
 				return w.pick([]string{"q.A", "q.B"})
 			}
 		case 6:
-			return w.pick([]string{"0.5", "2", "1.25", "-3", "0.1", "1"})
+			return w.pick([]string{"0.5", "2.0", "1.25", "-3.0", "0.1", "1.0"})
 		}
 	}
 }
