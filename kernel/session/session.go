@@ -12,6 +12,7 @@ import (
 	"strings"
 	"sync"
 	"sync/atomic"
+	"weak"
 
 	"brinkline/display"
 	"brinkline/kernel/session/internal/export"
@@ -65,7 +66,8 @@ type Session struct {
 
 	old       oldTypes
 	index     atomic.Int64
-	origins   []any
+	origins   []origin
+	runs      int
 	bound     map[string]reflect.Value // storage of session variables, by internal name
 	pos, line *int
 
@@ -105,8 +107,19 @@ func (s *Session) table() *table { return s.tab.Load() }
 
 func (s *Session) nextIndex() int { return int(s.index.Add(1)) }
 
+// An origin is what a recorded position counts from: a definition or a cell. It does not keep either alive.
+type origin struct {
+	def weak.Pointer[def]
+	src weak.Pointer[source]
+}
+
 func (s *Session) addOrigin(o any) int {
-	s.origins = append(s.origins, o)
+	switch o := o.(type) {
+	case *def:
+		s.origins = append(s.origins, origin{def: weak.Make(o)})
+	case *source:
+		s.origins = append(s.origins, origin{src: weak.Make(o)})
+	}
 	return len(s.origins) - 1
 }
 
@@ -116,11 +129,12 @@ func (s *Session) placeOf(pos int) place {
 		return place{}
 	}
 	offset := pos & (1<<offsetBits - 1)
-	switch o := s.origins[pos>>offsetBits].(type) {
-	case *def:
-		return place{o.src, o.start + offset}
-	case *source:
-		return place{o, offset}
+	o := s.origins[pos>>offsetBits]
+	if d := o.def.Value(); d != nil {
+		return place{d.src, d.start + offset}
+	}
+	if src := o.src.Value(); src != nil {
+		return place{src, offset}
 	}
 	return place{}
 }
@@ -180,7 +194,9 @@ func (s *Session) Run(ctx context.Context, c Cell, out Output) Result {
 	u.commit(low)
 	r := s.begin(ctx, src, out)
 	defer s.end(r)
-	return s.execute(r, prog, u, low)
+	res := s.execute(r, prog, u, low)
+	s.tidy()
+	return res
 }
 
 func cleanInternal(text string) string {
