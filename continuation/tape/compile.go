@@ -32,34 +32,28 @@ type guardRegs struct {
 	want       bool
 }
 
-// An instr is one step of the register machine: r[d] = op(r[a], r[b], r[c]).
+// An instr is one step of the register machine: r[d] = op(r[a], r[b], r[c]). In a
+// finished code the registers stand as offsets in bytes.
 type instr struct {
 	op         Op
 	d, a, b, c int32
 }
-
-// Fused operations of the machine; the product is rounded before the sum.
-const (
-	opMulAdd = opCount + iota // a*b + c
-	opMulSub                  // a*b - c
-	opSubMul                  // c - a*b
-	opCopy
-)
 
 // sizesOf are the numbers of inputs of each kind.
 type sizesOf struct{ n, m, h, dir, weights int }
 
 // A compiler turns nodes into instructions.
 type compiler struct {
-	g     *graph
-	code  *Code
-	order []int32
-	uses  []int32 // by node: how many instructions read it
-	last  []int32 // by node: index in order of the last that does
-	fused []bool
-	reg   []int32 // by node
-	free  []int32
-	regs  int32
+	g      *graph
+	code   *Code
+	order  []int32
+	uses   []int32 // by node: how many instructions read it
+	last   []int32 // by node: index in order of the last that does
+	fused  []bool  // by node: done inside of the instruction of its only reader
+	reader []bool  // by node: its instruction does another node too
+	reg    []int32 // by node
+	free   []int32
+	regs   int32
 }
 
 func compile(g *graph, outputs []output, slots int, size sizesOf, guards []guard) *Code {
@@ -171,68 +165,6 @@ func (c *compiler) room(z *zone, used bool, n int) {
 	}
 }
 
-// fuse finds products that only one sum reads.
-func (c *compiler) fuse(ids []int32) {
-	c.uses = make([]int32, len(c.g.nodes))
-	c.fused = make([]bool, len(c.g.nodes))
-	for _, id := range c.order {
-		in, count := c.g.nodes[id].operands()
-		for _, k := range in[:count] {
-			c.uses[k]++
-		}
-	}
-	for _, id := range ids {
-		c.uses[id]++
-	}
-	for _, id := range c.order {
-		n := c.g.nodes[id]
-		if n.op != opAdd && n.op != opSub || n.a == n.b {
-			continue
-		}
-		switch {
-		case c.fusible(n.a):
-			c.fused[n.a] = true
-		case c.fusible(n.b):
-			c.fused[n.b] = true
-		}
-	}
-}
-
-func (c *compiler) fusible(id int32) bool { return c.g.nodes[id].op == opMul && c.uses[id] == 1 }
-
-// lower returns the instruction of a node, with operands as nodes.
-func (c *compiler) lower(id int32) instr {
-	n := c.g.nodes[id]
-	if n.op == opAdd || n.op == opSub {
-		switch {
-		case n.a != n.b && c.fused[n.a]:
-			p := c.g.nodes[n.a]
-			if n.op == opAdd {
-				return instr{opMulAdd, id, p.a, p.b, n.b}
-			}
-			return instr{opMulSub, id, p.a, p.b, n.b}
-		case n.a != n.b && c.fused[n.b]:
-			p := c.g.nodes[n.b]
-			if n.op == opAdd {
-				return instr{opMulAdd, id, p.a, p.b, n.a}
-			}
-			return instr{opSubMul, id, p.a, p.b, n.a}
-		}
-	}
-	return instr{n.op, id, n.a, n.b, n.c}
-}
-
-func (op Op) reads() int {
-	switch op {
-	case opMulAdd, opMulSub, opSubMul:
-		return 3
-	}
-	if op >= opCount {
-		return 1
-	}
-	return kinds[op].arity
-}
-
 // allocate writes the instructions; a register is free again after the last use
 // of what it holds.
 func (c *compiler) allocate(outputs []output, guards []guard) {
@@ -260,11 +192,14 @@ func (c *compiler) allocate(outputs []output, guards []guard) {
 	for i := range list {
 		c.place(&list[i], int32(i)+1, temps)
 	}
-	c.code.instrs = list
 	start := make([]float64, c.regs)
 	copy(start, c.code.start)
 	c.code.start = start
-	c.copies(outputs)
+	list = c.copies(list, outputs)
+	for i := range list {
+		list[i].scale()
+	}
+	c.code.instrs = list
 	for _, gd := range guards {
 		r := guardRegs{path: -1, cond: c.reg[gd.cond], want: gd.want}
 		if gd.path >= 0 {
@@ -308,7 +243,7 @@ func (c *compiler) place(in *instr, now, temps int32) {
 
 // copies fills the slots of outputs that do not lie there anyway: constants once
 // and for all, inputs and repeated ones by an instruction.
-func (c *compiler) copies(outputs []output) {
+func (c *compiler) copies(list []instr, outputs []output) []instr {
 	for _, o := range outputs {
 		to := int32(c.code.zones.out + o.slot)
 		n := c.g.nodes[o.id]
@@ -316,7 +251,18 @@ func (c *compiler) copies(outputs []output) {
 		case n.op == opConst:
 			c.code.start[to] = n.value()
 		case from != to:
-			c.code.instrs = append(c.code.instrs, instr{op: opCopy, d: to, a: from})
+			list = append(list, instr{op: opCopy, d: to, a: from})
+		}
+	}
+	return list
+}
+
+// scale turns registers into offsets in bytes; an immediate stays.
+func (in *instr) scale() {
+	in.d *= 8
+	for k, at := range [...]*int32{&in.a, &in.b, &in.c} {
+		if k < in.op.reads() {
+			*at *= 8
 		}
 	}
 }

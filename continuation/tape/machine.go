@@ -1,6 +1,9 @@
 package tape
 
-import "math"
+import (
+	"math"
+	"unsafe"
+)
 
 // A Machine runs a [Code]. It has registers of its own and is used by one
 // goroutine at a time.
@@ -34,27 +37,31 @@ type Inputs struct {
 // false the results are those of another branch of the model, and of no use.
 func (m *Machine) Run(x, p []float64) bool {
 	z := &m.code.zones
-	if z.states.n > 0 {
-		copy(m.r[z.states.at:z.states.at+z.states.n], x)
-	}
-	if z.params.n > 0 {
-		copy(m.r[z.params.at:z.params.at+z.params.n], p)
-	}
+	m.fill(z.states, x)
+	m.fill(z.params, p)
 	return m.run()
 }
 
 // RunWith is Run for codes with weights and directions.
 func (m *Machine) RunWith(in *Inputs) bool {
 	z := &m.code.zones
-	if z.weights.n > 0 {
-		copy(m.r[z.weights.at:z.weights.at+z.weights.n], in.W)
-	}
+	m.fill(z.weights, in.W)
 	for k, d := range z.dirs {
-		if d.n > 0 {
-			copy(m.r[d.at:d.at+d.n], in.Dirs[k])
-		}
+		m.fill(d, in.Dirs[k])
 	}
 	return m.Run(in.X, in.P)
+}
+
+// fill copies inputs; short lists by hand, which is faster.
+func (m *Machine) fill(z zone, x []float64) {
+	to := m.r[z.at : z.at+z.n]
+	if z.n > 8 {
+		copy(to, x)
+		return
+	}
+	for i := range to {
+		to[i] = x[i]
+	}
 }
 
 func (m *Machine) run() bool {
@@ -62,7 +69,9 @@ func (m *Machine) run() bool {
 	for i := range c.hidden {
 		m.r[c.zones.hidden.at+i] = *c.hidden[i].at
 	}
-	execute(c.instrs, m.r)
+	if len(c.instrs) > 0 {
+		execute(c.instrs, unsafe.Pointer(unsafe.SliceData(m.r)))
+	}
 	for _, g := range c.guards {
 		if (g.path < 0 || m.r[g.path] != 0) && (m.r[g.cond] != 0) != g.want {
 			return false
@@ -71,59 +80,96 @@ func (m *Machine) run() bool {
 	return true
 }
 
-// execute does the instructions. Products are rounded before they are added, so
-// that no processor fuses them.
-func execute(code []instr, r []float64) {
+// execute does the instructions on the registers from base on. Products are
+// rounded before they are added, so that no processor fuses them. The offsets
+// come from the compiler, which knows how many registers there are.
+func execute(code []instr, base unsafe.Pointer) {
 	for i := range code {
 		in := &code[i]
+		d := at(base, in.d)
 		switch in.op {
 		case opAdd:
-			r[in.d] = r[in.a] + r[in.b]
+			*d = *at(base, in.a) + *at(base, in.b)
 		case opSub:
-			r[in.d] = r[in.a] - r[in.b]
+			*d = *at(base, in.a) - *at(base, in.b)
 		case opMul:
-			r[in.d] = r[in.a] * r[in.b]
-		case opMulAdd:
-			r[in.d] = float64(r[in.a]*r[in.b]) + r[in.c]
-		case opMulSub:
-			r[in.d] = float64(r[in.a]*r[in.b]) - r[in.c]
-		case opSubMul:
-			r[in.d] = r[in.c] - float64(r[in.a]*r[in.b])
+			*d = *at(base, in.a) * *at(base, in.b)
 		case opDiv:
-			r[in.d] = r[in.a] / r[in.b]
+			*d = *at(base, in.a) / *at(base, in.b)
 		case opNeg:
-			r[in.d] = -r[in.a]
+			*d = -*at(base, in.a)
 		case opCopy:
-			r[in.d] = r[in.a]
+			*d = *at(base, in.a)
+		case opAddAdd:
+			*d = *at(base, in.a) + *at(base, in.b) + *at(base, in.c)
+		case opAddSub:
+			*d = *at(base, in.a) + *at(base, in.b) - *at(base, in.c)
+		case opRSubAdd:
+			*d = *at(base, in.c) - (*at(base, in.a) + *at(base, in.b))
+		case opAddMul:
+			*d = (*at(base, in.a) + *at(base, in.b)) * *at(base, in.c)
+		case opAddDiv:
+			*d = (*at(base, in.a) + *at(base, in.b)) / *at(base, in.c)
+		case opRDivAdd:
+			*d = *at(base, in.c) / (*at(base, in.a) + *at(base, in.b))
+		case opSubAdd:
+			*d = *at(base, in.a) - *at(base, in.b) + *at(base, in.c)
+		case opSubSub:
+			*d = *at(base, in.a) - *at(base, in.b) - *at(base, in.c)
+		case opRSubSub:
+			*d = *at(base, in.c) - (*at(base, in.a) - *at(base, in.b))
+		case opSubMul:
+			*d = (*at(base, in.a) - *at(base, in.b)) * *at(base, in.c)
+		case opSubDiv:
+			*d = (*at(base, in.a) - *at(base, in.b)) / *at(base, in.c)
+		case opRDivSub:
+			*d = *at(base, in.c) / (*at(base, in.a) - *at(base, in.b))
+		case opMulAdd:
+			*d = float64(*at(base, in.a)**at(base, in.b)) + *at(base, in.c)
+		case opMulSub:
+			*d = float64(*at(base, in.a)**at(base, in.b)) - *at(base, in.c)
+		case opRSubMul:
+			*d = *at(base, in.c) - float64(*at(base, in.a)**at(base, in.b))
+		case opMulMul:
+			*d = float64(*at(base, in.a)**at(base, in.b)) * *at(base, in.c)
+		case opMulDiv:
+			*d = float64(*at(base, in.a)**at(base, in.b)) / *at(base, in.c)
+		case opRDivMul:
+			*d = *at(base, in.c) / float64(*at(base, in.a)**at(base, in.b))
+		case opNegMul:
+			*d = -float64(*at(base, in.a) * *at(base, in.b))
+		case opExpMul:
+			*d = math.Exp(*at(base, in.a)) * *at(base, in.b)
 		case opExp:
-			r[in.d] = math.Exp(r[in.a])
+			*d = math.Exp(*at(base, in.a))
 		case opSqrt:
-			r[in.d] = math.Sqrt(r[in.a])
+			*d = math.Sqrt(*at(base, in.a))
 		case opSelect:
-			if r[in.a] != 0 {
-				r[in.d] = r[in.b]
-			} else {
-				r[in.d] = r[in.c]
+			v := at(base, in.c)
+			if *at(base, in.a) != 0 {
+				v = at(base, in.b)
 			}
+			*d = *v
 		case opLess:
-			r[in.d] = truth(r[in.a] < r[in.b])
+			*d = truth(*at(base, in.a) < *at(base, in.b))
 		default:
-			r[in.d] = general(in, r)
+			*d = general(in, base)
 		}
 	}
 }
 
-func general(in *instr, r []float64) float64 {
-	var x [3]float64
+// at is the register at an offset in bytes.
+func at(base unsafe.Pointer, offset int32) *float64 {
+	return (*float64)(unsafe.Add(base, uintptr(uint32(offset))))
+}
+
+func general(in *instr, base unsafe.Pointer) float64 {
+	x := *at(base, in.a)
 	switch kinds[in.op].arity {
-	case 3:
-		x[2] = r[in.c]
-		fallthrough
+	case 1:
+		return apply(in.op, x, 0, 0, int(in.c))
 	case 2:
-		x[1] = r[in.b]
-		fallthrough
-	default:
-		x[0] = r[in.a]
+		return apply(in.op, x, *at(base, in.b), 0, 0)
 	}
-	return apply(in.op, x[0], x[1], x[2], int(in.c))
+	return apply(in.op, x, *at(base, in.b), *at(base, in.c), 0)
 }
