@@ -69,6 +69,7 @@ func script(t *testing.T, args ...string) string {
 	cmd := exec.Command(python, args...)
 	cmd.Dir = "testdata"
 	cmd.Env = append(os.Environ(), "PYTHONDONTWRITEBYTECODE=1", "PYTHONWARNINGS=ignore")
+	cmd.WaitDelay = time.Second // for kernels that hold its output
 	limit := time.AfterFunc(2*time.Minute, func() { cmd.Process.Kill() })
 	out, err := cmd.CombinedOutput()
 	if !limit.Stop() {
@@ -81,8 +82,8 @@ func script(t *testing.T, args ...string) string {
 }
 
 func TestClient(t *testing.T) {
-	need(t, "jupyter_client")
-	for _, class := range []string{"Cells", "Questions", "Interrupts", "Life"} {
+	need(t, "jupyter_client", "zmq")
+	for _, class := range []string{"Cells", "Questions", "Interrupts", "Life", "Sockets"} {
 		t.Run(class, func(t *testing.T) {
 			if class != "Interrupts" { // which measures time
 				t.Parallel()

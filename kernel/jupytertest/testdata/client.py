@@ -1,10 +1,16 @@
 """What the kernel answers to the reference client."""
 
 import os
+import tempfile
 import time
 import unittest
 
+import zmq
+import zmq.utils.monitor
+from jupyter_client import KernelManager
+
 from common import PATIENCE, KernelCase
+
 
 class Cells(KernelCase):
     def test_kernel_info(self):
@@ -164,6 +170,64 @@ class Life(KernelCase):
         self.assertLess(time.monotonic() - began, 2.5, "it was ended by force")
         self.assertFalse(self.manager.is_alive())
         self.assertFalse(os.path.exists("/proc/" + second))
+
+
+class Sockets(unittest.TestCase):
+    """What the reference client's own sockets see."""
+
+    def start(self, **options):
+        manager = KernelManager(kernel_name="brinkline", **options)
+        manager.start_kernel()
+        self.addCleanup(manager.shutdown_kernel, now=True)
+        return manager
+
+    def test_socket_files(self):
+        with tempfile.TemporaryDirectory() as folder:
+            manager = self.start(transport="ipc", ip=os.path.join(folder, "k"))
+            client = manager.client()
+            client.start_channels()
+            client.wait_for_ready(timeout=PATIENCE)
+            self.assertEqual(client.execute_interactive("1 + 1", timeout=PATIENCE)["content"]["status"], "ok")
+            files = [f for f in os.listdir(folder) if f.startswith("k-")]
+            self.assertEqual(len(files), 5)
+            self.assertFalse(any(os.stat(os.path.join(folder, f)).st_mode & 0o077 for f in files))
+            client.stop_channels()
+            manager.shutdown_kernel()
+            self.assertEqual([f for f in os.listdir(folder) if f.startswith("k-")], [])
+
+    def test_several_clients(self):
+        manager = self.start()
+        clients = [manager.client() for _ in range(3)]
+        for client in clients:
+            client.start_channels()
+            client.wait_for_ready(timeout=PATIENCE)
+        request = clients[0].execute('fmt.Println("for all")')
+        self.assertEqual(clients[0].get_shell_msg(timeout=PATIENCE)["parent_header"]["msg_id"], request)
+        for client in clients:
+            while True:
+                message = client.get_iopub_msg(timeout=PATIENCE)
+                if message["msg_type"] == "stream":
+                    self.assertEqual(message["content"]["text"], "for all\n")
+                    self.assertEqual(message["parent_header"]["msg_id"], request)
+                    break
+            client.stop_channels()
+
+    def test_zeromq_heartbeats(self):
+        manager = self.start()
+        context = zmq.Context()
+        self.addCleanup(context.destroy, linger=0)
+        dealer = context.socket(zmq.DEALER)
+        dealer.setsockopt(zmq.HEARTBEAT_IVL, 50)
+        dealer.setsockopt(zmq.HEARTBEAT_TIMEOUT, 300)
+        monitor = dealer.get_monitor_socket()
+        info = manager.get_connection_info()
+        dealer.connect(f"tcp://{info['ip']}:{info['shell_port']}")
+        time.sleep(1.5)
+        events = []
+        while monitor.poll(0):
+            events.append(zmq.utils.monitor.recv_monitor_message(monitor)["event"])
+        self.assertIn(zmq.EVENT_HANDSHAKE_SUCCEEDED, events)
+        self.assertNotIn(zmq.EVENT_DISCONNECTED, events)
 
 
 if __name__ == "__main__":
