@@ -48,6 +48,12 @@ type LocusSpecial struct {
 	Omega2 float64 // Hopf-Hopf: the frequency of the other pair
 }
 
+// Pair returns the two parameters of the locus, with their values here.
+func (p *LocusPoint) Pair() (first, second Parameter) {
+	list := p.model.parameters
+	return Parameter{list[p.first].Variable, p.First}, Parameter{list[p.free].Variable, p.Second}
+}
+
 // Index returns the place of the point among the points of its locus.
 func (s *LocusSpecial) Index() int { return s.index }
 

@@ -14,11 +14,12 @@ import (
 // A side is what stands on one axis of a figure: how to read it from a point, and
 // how it changes along the branch there.
 type side struct {
-	variable continuation.Variable
-	label    string
-	value    func(*continuation.Point) (float64, error)
-	log      bool
-	shown    interval
+	variable  continuation.Variable
+	label     string
+	value     func(*continuation.Point) (float64, error)
+	log       bool
+	parameter bool // a parameter of the model, in its own right
+	shown     interval
 }
 
 // sides chooses what stands on the axes.
@@ -43,6 +44,9 @@ func (f *Figure) xName() string {
 	if f.x != "" {
 		return f.x
 	}
+	if first, second, ok := f.pair(); ok {
+		return other(first, second, f.y)
+	}
 	for _, it := range f.items {
 		if name := it.followed(); name != "" {
 			return name
@@ -51,9 +55,28 @@ func (f *Figure) xName() string {
 	return f.items[0].model().Parameters()[0].Name
 }
 
+// pair returns the two parameters of the first locus.
+func (f *Figure) pair() (first, second string, ok bool) {
+	for _, l := range f.loci() {
+		return l.First().Name, l.Second().Name, true
+	}
+	return "", "", false
+}
+
+// other returns the first name, or the second where the first is taken.
+func other(name, instead, taken string) string {
+	if name == taken {
+		return instead
+	}
+	return name
+}
+
 func (f *Figure) yName() string {
 	if f.y != "" {
 		return f.y
+	}
+	if first, second, ok := f.pair(); ok {
+		return other(second, first, f.x)
 	}
 	return f.items[0].model().States()[0].Name
 }
@@ -74,8 +97,20 @@ func (f *Figure) named(name string) (side, error) {
 		}
 	}
 	s.label = s.variable.Label()
+	s.parameter = f.isParameter(name)
 	s.value = func(p *continuation.Point) (float64, error) { return p.At(name) }
 	return s, nil
+}
+
+// isParameter reports whether a name is a parameter in all models.
+func (f *Figure) isParameter(name string) bool {
+	for _, m := range f.models() {
+		is := func(q continuation.Parameter) bool { return q.Name == name }
+		if !slices.ContainsFunc(m.Parameters(), is) {
+			return false
+		}
+	}
+	return true
 }
 
 // slope returns the derivative of what stands on the axis by the arclength of

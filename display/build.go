@@ -10,6 +10,9 @@ import (
 
 // build makes the picture of the figure.
 func (f *Figure) build() (*picture, error) {
+	if f.eigen != nil {
+		return f.buildEigenvalues()
+	}
 	s, err := f.scene()
 	if err != nil {
 		return nil, err
@@ -62,6 +65,12 @@ func (f *Figure) notes() []string {
 			notes = append(notes, sentenceCase(n))
 		}
 	}
+	for _, l := range f.loci() {
+		notes = append(notes, sentenceCase(endsOfLocus(l)))
+		for _, n := range l.Notes() {
+			notes = append(notes, sentenceCase(n))
+		}
+	}
 	return notes
 }
 
@@ -79,15 +88,24 @@ func (f *Figure) wrapNotes(notes []string) []string {
 
 // endsOf says how many points there are and why the branch ends.
 func endsOf(b *continuation.Branch) string {
-	text := count(len(b.Points()), "point", "points")
-	ends := b.Ends()
+	return endsText("branch", len(b.Points()), b)
+}
+
+func endsOfLocus(l *continuation.Locus) string { return endsText("locus", len(l.Points()), l) }
+
+func endsText(what string, points int, curve interface {
+	Closed() bool
+	Ends() [2]continuation.End
+}) string {
+	text := count(points, "point", "points") + "; the " + what + " "
+	ends := curve.Ends()
 	switch {
-	case b.Closed():
-		return text + "; the branch is a closed curve"
+	case curve.Closed():
+		return text + "is a closed curve"
 	case ends[0].Text == ends[1].Text:
-		return text + "; the branch " + ends[0].Text + " (both ends)"
+		return text + ends[0].Text + " (both ends)"
 	default:
-		return text + "; the branch " + ends[0].Text + " and " + ends[1].Text
+		return text + ends[0].Text + " and " + ends[1].Text
 	}
 }
 

@@ -191,9 +191,28 @@ func sign(v float64) string {
 	return "+"
 }
 
-// vectors adds a row for each state with its value and the entries of null
-// vectors; of many states those with the largest entries of the first vector.
-func (g *Grid) vectors(p *continuation.Point, right, left []float64) {
+// A vector has an entry for each state, beside which it stands in a card, and perhaps
+// one for the followed parameter.
+type vector struct {
+	name    string
+	entries []float64
+}
+
+// beyond is the entry of the followed parameter, empty where there is none.
+func (v vector) beyond(n int) string {
+	if len(v.entries) <= n {
+		return ""
+	}
+	return reliable(v.entries[n], vectorDigits)
+}
+
+// vectors adds a row for each state with its value and the entries of vectors; of
+// many states those with the largest entries of the first vector.
+func (g *Grid) vectors(p *continuation.Point, list []vector) {
+	if len(list) == 0 {
+		g.list(p.Model().States(), p.State, stateDigits)
+		return
+	}
 	const most = 12
 	vars := p.Model().States()
 	order := make([]int, len(vars))
@@ -201,14 +220,19 @@ func (g *Grid) vectors(p *continuation.Point, right, left []float64) {
 		order[i] = i
 	}
 	if len(vars) > most {
-		sort.SliceStable(order, func(a, b int) bool { return math.Abs(right[order[a]]) > math.Abs(right[order[b]]) })
+		lead := list[0].entries
+		sort.SliceStable(order, func(a, b int) bool { return math.Abs(lead[order[a]]) > math.Abs(lead[order[b]]) })
 		order = order[:most]
 		sort.Ints(order)
 	}
 	for _, i := range order {
-		g.add(vars[i].Label(), significant(p.State[i], stateDigits), reliable(right[i], vectorDigits), reliable(left[i], vectorDigits))
+		cells := []string{vars[i].Label(), significant(p.State[i], stateDigits)}
+		for _, v := range list {
+			cells = append(cells, reliable(v.entries[i], vectorDigits))
+		}
+		g.add(cells...)
 	}
 	if len(vars) > most {
-		g.say("...", fmt.Sprintf("%d of %d states, those with the largest entries of v", most, len(vars)))
+		g.say("...", fmt.Sprintf("%d of %d states, those with the largest entries of %s", most, len(vars), list[0].name))
 	}
 }

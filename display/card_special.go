@@ -3,7 +3,6 @@ package display
 import (
 	"fmt"
 	"math"
-	"strings"
 
 	"brinkline/continuation"
 )
@@ -18,6 +17,10 @@ func foldCard(f *continuation.Fold) *Grid {
 	g.say("quadratic coefficient", fmt.Sprintf("a = ½ wᵀ f_xx[v, v] = %s", significant(f.Quadratic, vectorDigits)))
 	g.say("curvature", fmt.Sprintf("-a/(wᵀ f_λ) = %s: %s - %s ≈ %s s² where x - x* ≈ s v",
 		significant(f.Curvature, vectorDigits), q.Name, valueText(f, 6), significant(f.Curvature, vectorDigits)))
+	if !math.IsNaN(f.Cubic) {
+		g.say("cubic coefficient", fmt.Sprintf("1/6 wᵀ (f_xxx[v, v, v] + 3 f_xx[v, h]) = %s, f_x h = -f_xx[v, v] up to a multiple of v, vᵀ h = 0: what turns the branch where a vanishes, at a cusp",
+			significant(f.Cubic, vectorDigits)))
+	}
 	g.note(normalisation(f.WeakLeft))
 	g.note(caution)
 	return g
@@ -25,27 +28,34 @@ func foldCard(f *continuation.Fold) *Grid {
 
 // specialCard is what the cards of all special points begin with.
 func specialCard(s continuation.Special, right, left []float64, uncertainty float64) *Grid {
+	vectors := []vector{}
+	if right != nil {
+		vectors = []vector{{"v", right}, {"w", left}}
+	}
+	return specialCardWith(s, uncertainty, vectors...)
+}
+
+// specialCardWith is a special point's card with vectors beside its states.
+func specialCardWith(s continuation.Special, uncertainty float64, vectors ...vector) *Grid {
 	p := s.Where()
 	v := variableOf(p)
-	caption := fmt.Sprintf("%s of %s in %s", capital(s.Kind()), p.Model().Name(), v.Name)
-	g := newCard(caption, "value")
-	if right != nil {
-		g = newCard(caption, "value", "v", "w")
+	heads := []string{"value"}
+	for _, one := range vectors {
+		heads = append(heads, one.name)
 	}
+	g := newCard(fmt.Sprintf("%s of %s in %s", capital(s.Kind()), p.Model().Name(), v.Name), heads...)
 	text := "0"
 	if !isZero(s) {
 		text = reliable(p.Value(), s.Digits())
 	}
-	cells := make([]string, len(g.columns))
-	cells[0], cells[1] = v.Label(), text
+	cells := []string{v.Label(), text}
+	for _, one := range vectors {
+		cells = append(cells, one.beyond(len(p.State)))
+	}
 	g.add(cells...)
 	g.say("digits", digitsText(s.Digits(), uncertainty, v.Unit))
 	g.heading("states")
-	if right != nil {
-		g.vectors(p, right, left)
-	} else {
-		g.list(p.Model().States(), p.State, stateDigits)
-	}
+	g.vectors(p, vectors)
 	g.heading("kind")
 	before, after := around(s)
 	g.say("along the branch", alongText(p.Model(), before, after))
@@ -95,56 +105,6 @@ func normalisation(weak bool) string {
 		return "v and w are the null vectors of f_x: f_x v = 0, wᵀ f_x = 0, |v| = |w| = 1 in the units shown, as wᵀ v is nearly 0 (a second eigenvalue vanishes near by)."
 	}
 	return "v and w are the null vectors of f_x: f_x v = 0, wᵀ f_x = 0, |v| = 1 in the units shown, its largest entry positive, and wᵀ v = 1."
-}
-
-// branchPointCard shows a simple stationary bifurcation.
-func branchPointCard(b *continuation.BranchPoint) *Grid {
-	g := specialCard(b, b.Right, b.Left, b.Uncertainty)
-	if name := b.Name(); name != "" {
-		g.say("name", name)
-	}
-	g.say("meaning", b.Meaning())
-	g.say("range test", fmt.Sprintf("wᵀ f_λ = %s, 0 up to rounding: f_λ lies in the range of f_x, so two branches cross here; relative to its natural size %s",
-		significant(b.RangeTest, 2), significant(b.RangeRelative, 2)))
-	if b.Tangents[0] != nil {
-		g.say("reduced equation", reducedText(b))
-	}
-	g.note(normalisation(false))
-	g.note(caution)
-	return g
-}
-
-// reducedText writes the equation of both branches to leading order.
-func reducedText(b *continuation.BranchPoint) string {
-	var out strings.Builder
-	for _, term := range []struct {
-		factor float64
-		power  string
-	}{{b.Quadratic, "s²"}, {b.Mixed, "s m"}, {b.ParameterQuadratic, "m²"}, {b.Cubic, "s³"}} {
-		switch {
-		case term.factor == 0:
-			continue
-		case out.Len() > 0:
-			out.WriteString(" " + sign(term.factor) + " ")
-		case term.factor < 0:
-			out.WriteString("-")
-		}
-		out.WriteString(significant(math.Abs(term.factor), vectorDigits) + " " + term.power)
-	}
-	return fmt.Sprintf("%s = 0 for m = %s - %s, x - x* ≈ s v", &out, b.Parameter().Name, valueText(b, 6))
-}
-
-// hopfCard shows a Hopf point.
-func hopfCard(h *continuation.Hopf) *Grid {
-	g := specialCard(h, nil, nil, h.Uncertainty)
-	g.say("meaning", h.Meaning())
-	g.say("pair", fmt.Sprintf("± %s i, the eigenvalues that cross the imaginary axis (radians per unit of time)", significant(h.Omega, stateDigits)))
-	g.say("period", significant(h.Period, stateDigits)+" units of time, of small oscillations")
-	if !math.IsNaN(h.Lyapunov) {
-		g.say("first Lyapunov coefficient", fmt.Sprintf("%s for |q| = 1 in the units shown and <p, q> = 1", significant(h.Lyapunov, vectorDigits)))
-	}
-	g.note(caution)
-	return g
 }
 
 // multipleCard shows a point with several null vectors.

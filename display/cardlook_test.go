@@ -6,6 +6,8 @@ import (
 	"path/filepath"
 	"strings"
 	"testing"
+
+	"brinkline/continuation"
 )
 
 func TestCardGallery(t *testing.T) {
@@ -42,12 +44,21 @@ func cards(t testing.TB) []any {
 		t.Fatal(err)
 	}
 	feed := feederBranch(t)
-	return []any{
+	_, folds, hopfs := tankLoci(t)
+	rocker := takens(t, -1)
+	double := locus(t, rocker.Folds()[0], "Lever", continuation.Within(-3, 3))
+	list := []any{}
+	for _, c := range folds.Specials() {
+		list = append(list, c)
+	}
+	return append(list,
 		path.Model(), start, tankStart(t), fold, path.HopfPoints()[0], strutBranch(t).BranchPoints()[0], margin, sens,
 		Table(path), path.Folds(), Points(path), path, feed.Model(), feed.Folds()[0], Table(feed), feed, Points(feed.Points()[:5]),
+		Table(folds), folds.Specials(), Points(folds), Points(hopfs), Table(hopfs), folds, hopfs.Points()[2],
+		double.Specials()[0], hopfHopf(t).Specials()[0], foldHopf(t).Specials()[0], degenerateLocus(t).Specials()[0],
+		degenerate(t, 1).HopfPoints()[0], transcritical(t)[0].BranchPoints()[0], hotTank(t).Events()[0],
 		Table(strutBranch(t)), Table(map[string]float64{"a": 1, "b": 2.5}), Table([]struct {
 			Name string
 			Heat float64 `unit:"kW"`
-		}{{"north", 1.25}, {"south", 1250}}),
-	}
+		}{{"north", 1.25}, {"south", 1250}}))
 }

@@ -29,6 +29,9 @@ func (d *drawing) Plot(c draw.Canvas, p *plot.Plot) {
 	frame.Max.X += cropRight - 3
 	frame.Max.Y += cropTop - 3
 	s := &sheet{Canvas: c, plot: p, room: plane.Room{Frame: frame}}
+	for _, h := range d.scene.hair {
+		s.hairline(h)
+	}
 	for _, cv := range d.scene.curves {
 		s.curve(cv)
 	}
@@ -66,9 +69,22 @@ func (s *sheet) direction(p place, dx, dy float64) vg.Point {
 func (s *sheet) curve(c curve) {
 	for _, r := range c.runs {
 		for _, line := range s.lines(r) {
-			s.StrokeLines(lineStyle(c, r.line), line)
+			s.StrokeLines(r.style(c), line)
 			s.room.BlockLine(line)
 		}
+	}
+}
+
+// hairline draws a thin line and keeps labels off it.
+func (s *sheet) hairline(h hairline) {
+	style := lineStyle(curve{ink: h.ink}, h.line)
+	style.Width = hairWidth
+	if h.line == dashed {
+		style.Dashes = fineDashes
+	}
+	for _, line := range s.lines(run{places: h.places}) {
+		s.StrokeLines(style, line)
+		s.room.BlockLine(line)
 	}
 }
 
@@ -85,6 +101,14 @@ func (s *sheet) lines(r run) [][]vg.Point {
 	return out
 }
 
+func (r run) style(c curve) draw.LineStyle {
+	style := lineStyle(c, r.line)
+	if r.fine {
+		style.Width = fineWidth
+	}
+	return style
+}
+
 func lineStyle(c curve, kind lineKind) draw.LineStyle {
 	style := draw.LineStyle{Color: c.ink, Width: lineWidth}
 	switch kind {
@@ -92,6 +116,8 @@ func lineStyle(c curve, kind lineKind) draw.LineStyle {
 		style.Dashes = dashes
 	case dotted:
 		style.Dashes = dots
+	case dashDotted:
+		style.Dashes = dashesAndDots
 	}
 	return style
 }
@@ -124,6 +150,12 @@ func (s *sheet) marks(list []mark) []spot {
 			s.ring(&sp, u)
 		case tickShape:
 			s.tick(&sp, u)
+		case wedgeShape:
+			s.wedge(&sp)
+		case restShape, throughShape, twinShape, halfShape:
+			s.corner(&sp, u)
+		case crossShape:
+			s.cross(&sp)
 		default:
 			s.dot(&sp)
 		}
@@ -133,8 +165,11 @@ func (s *sheet) marks(list []mark) []spot {
 }
 
 func rank(m mark) int {
-	if m.shape == dotShape && m.label == "" {
+	switch {
+	case m.shape == dotShape && m.label == "":
 		return 0
+	case m.shape >= wedgeShape: // a fold on the branch may be one on a locus too
+		return 2
 	}
 	return 1
 }

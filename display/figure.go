@@ -10,7 +10,8 @@ import (
 	"brinkline/continuation"
 )
 
-// A Figure is a picture of branches, steady states, special points and margins.
+// A Figure is a picture of branches, loci, steady states, special points and
+// margins, or of eigenvalues.
 // Its methods change it and return it, so that calls can be chained; the first
 // error of a chain is kept, see [Figure.Err].
 type Figure struct {
@@ -25,6 +26,8 @@ type Figure struct {
 	rangeX        interval
 	rangeY        interval
 	captioned     bool // write under the plot where the branches end
+	eigen         *eigenvalues
+	nowDrawn      bool // the values that the model was made with are in the picture
 
 	err   error
 	built *picture
@@ -36,10 +39,11 @@ type interval struct {
 	set       bool
 }
 
-// Plot makes a figure of branches, steady states, special points and margins, and
-// of slices of them. The followed parameter of the first branch is on the x axis
-// and its first state on the y axis unless [Figure.X] and [Figure.Y] say
-// otherwise.
+// Plot makes a figure of branches, loci, steady states, special points and
+// margins, and of slices of them. The followed parameter of the first branch is on
+// the x axis and its first state on the y axis unless [Figure.X] and [Figure.Y] say
+// otherwise; with a locus, its two parameters are. In such a plane of two
+// parameters a branch is a thin line with its special points.
 //
 // A steady state is a small dot with the value of the x axis beside it; Mark gives
 // it another word. A margin is an arrow from the steady state to the limit.
@@ -64,6 +68,9 @@ func (f *Figure) X(name string) *Figure {
 
 // Y puts a state, a parameter or a quantity of the model on the y axis.
 func (f *Figure) Y(name string) *Figure {
+	if f.eigen != nil {
+		return f.fail(errors.New("the y axis of a figure of eigenvalues is theirs; Y cannot change it"))
+	}
 	f.y, f.yFunc = name, nil
 	return f.check(name)
 }
@@ -72,6 +79,9 @@ func (f *Figure) Y(name string) *Figure {
 // its unit: YFunc("Yield (kg/h)", ...).
 func (f *Figure) YFunc(label string, y func(*continuation.Point) float64) *Figure {
 	f.built = nil
+	if f.eigen != nil {
+		return f.fail(errors.New("the y axis of a figure of eigenvalues is theirs; YFunc cannot change it"))
+	}
 	if y == nil {
 		return f.fail(fmt.Errorf("YFunc(%q) wants a function of a point", label))
 	}
@@ -98,13 +108,13 @@ func (f *Figure) Size(width, height float64) *Figure {
 	return f
 }
 
-// Label names the branches in the order in which they were given. Without it
-// branches carry what tells them apart: the values of other parameters, or the
-// names of their models.
+// Label names the branches and loci in the order in which they were given. Without
+// it branches carry what tells them apart: the values of other parameters, or the
+// names of their models; loci say what they are made of.
 func (f *Figure) Label(texts ...string) *Figure {
 	f.built = nil
-	if n := len(f.branches()); len(texts) > n {
-		return f.fail(fmt.Errorf("Label has %d texts for %s", len(texts), count(n, "branch", "branches")))
+	if n := len(f.lines()); len(texts) > n {
+		return f.fail(fmt.Errorf("Label has %d texts for %s", len(texts), count(n, "curve", "curves")))
 	}
 	f.labels = texts
 	return f

@@ -32,7 +32,7 @@ func TestFigureErrors(t *testing.T) {
 		"an error":         {Plot(path, errors.New("did not converge")), "did not converge"},
 		"a number":         {Plot(3.0), "a float64 cannot be drawn"},
 		"size":             {Plot(path).Size(0, 9), "in centimetres"},
-		"labels":           {Plot(path).Label("a", "b"), "Label has 2 texts for 1 branch"},
+		"labels":           {Plot(path).Label("a", "b"), "Label has 2 texts for 1 curve"},
 		"range":            {Plot(path).RangeX(3, 2), "the first value must be the smaller"},
 		"no function":      {Plot(path).YFunc("y", nil), "wants a function"},
 		"log of negative":  {Plot(other).Y("Angle").LogY(), "a logarithmic axis needs positive values; Angle is -"},

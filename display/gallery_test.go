@@ -58,6 +58,7 @@ func gallery(t testing.TB) map[string]*Figure {
 		t.Fatal(err)
 	}
 	figures["pitchfork"] = Plot(trivial, bent).Label("straight", "bent")
+	locusGallery(t, figures)
 	figures["event"] = Plot(hotTank(t)).Y("Temperature")
 	figures["isola"] = branchFigure(isola(t))
 	figures["points"] = Plot(path.Points(), path.Folds())
@@ -130,4 +131,38 @@ func transcritical(t testing.TB) []*continuation.Branch {
 func hotTank(t testing.TB) *continuation.Branch {
 	hot := func(p *continuation.Point) float64 { return p.State[1] - 390 }
 	return follow(t, tankStart(t), "Coolant", continuation.Within(280, 320), continuation.Mark("too hot", hot))
+}
+
+func locusGallery(t testing.TB, figures map[string]*Figure) {
+	path, folds, hopfs := tankLoci(t)
+	show := func(l *continuation.Locus) *Figure {
+		f := Plot(l)
+		f.captioned = true
+		return f
+	}
+	figures["locus"] = show(folds)
+	figures["locushopf"] = show(hopfs)
+	figures["locusplane"] = Plot(path, folds, hopfs).X("Coolant").Y("Inflow")
+	figures["locusedge"] = Plot(path, folds).X("Coolant").Y("Inflow")
+	start := path.Points()[path.Start()]
+	figures["locustoday"] = Plot(folds, Mark(start, "today"))
+	figures["locusstate"] = Plot(path, folds).X("Coolant").Y("Temperature")
+	if m, err := start.MarginTo(path.Folds()[0]); err == nil {
+		figures["locusmargin"] = Plot(folds, m)
+	}
+	rocker := takens(t, -1)
+	within := continuation.Within(-3, 3)
+	figures["takens"] = Plot(locus(t, rocker.Folds()[0], "Lever", within), locus(t, rocker.HopfPoints()[0], "Lever", within))
+	figures["foldhopf"] = show(foldHopf(t))
+	figures["hopfhopf"] = show(hopfHopf(t))
+	figures["degenerate"] = show(degenerateLocus(t))
+	figures["fansoft"] = Plot(degenerate(t, -1))
+	figures["fanhard"] = Plot(degenerate(t, 1)).Y("Y")
+	figures["fantakens"] = Plot(rocker)
+	figures["eigentank"] = Eigenvalues(path)
+	figures["eigenpoint"] = Eigenvalues(start)
+	figures["eigenstrut"] = Eigenvalues(strutBranch(t))
+	figures["eigenfeeder"] = Eigenvalues(feederBranch(t))
+	figures["eigenfour"] = Eigenvalues(hopfHopf(t).Points()[3])
+	figures["eigentakens"] = Eigenvalues(rocker)
 }

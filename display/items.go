@@ -11,6 +11,8 @@ import (
 // An item is one thing that a figure draws: exactly one of its fields is set.
 type item struct {
 	branch  *continuation.Branch
+	locus   *continuation.Locus
+	corner  *continuation.LocusSpecial
 	point   *continuation.Point
 	special continuation.Special
 	margin  *continuation.Margin
@@ -52,6 +54,15 @@ func (f *Figure) add(v any) error {
 		return f.put(v != nil, "event", item{special: v})
 	case *continuation.Margin:
 		return f.put(v != nil, "margin", item{margin: v})
+	case *continuation.Locus:
+		return f.put(v != nil, "locus", item{locus: v})
+	case *continuation.LocusSpecial:
+		return f.put(v != nil, "special point of a locus", item{corner: v})
+	case *continuation.LocusPoint:
+		if v == nil {
+			return f.put(false, "point of a locus", item{})
+		}
+		return f.put(true, "", item{point: v.Point, word: "point of a locus"})
 	}
 	return f.addOther(v)
 }
@@ -83,7 +94,7 @@ func (f *Figure) addOther(v any) error {
 	}
 	list := reflect.ValueOf(v)
 	if list.Kind() != reflect.Slice && list.Kind() != reflect.Array {
-		return fmt.Errorf("a %T cannot be drawn; Plot takes branches, steady states, special points and margins", v)
+		return fmt.Errorf("a %T cannot be drawn; Plot takes branches, loci, steady states, special points and margins", v)
 	}
 	for i := range list.Len() {
 		if err := f.add(list.Index(i).Interface()); err != nil {
@@ -110,6 +121,28 @@ func (f *Figure) branches() []*continuation.Branch {
 	for _, it := range f.items {
 		if it.branch != nil {
 			list = append(list, it.branch)
+		}
+	}
+	return list
+}
+
+// loci returns the loci in the order in which they were given.
+func (f *Figure) loci() []*continuation.Locus {
+	var list []*continuation.Locus
+	for _, it := range f.items {
+		if it.locus != nil {
+			list = append(list, it.locus)
+		}
+	}
+	return list
+}
+
+// lines returns what is drawn as a curve: branches and loci, in order.
+func (f *Figure) lines() []item {
+	var list []item
+	for _, it := range f.items {
+		if it.branch != nil || it.locus != nil {
+			list = append(list, it)
 		}
 	}
 	return list
@@ -162,6 +195,10 @@ func (it item) model() *continuation.Model {
 	switch {
 	case it.branch != nil:
 		return it.branch.Model()
+	case it.locus != nil:
+		return it.locus.Model()
+	case it.corner != nil:
+		return it.corner.Where.Model()
 	case it.point != nil:
 		return it.point.Model()
 	case it.special != nil:
@@ -176,6 +213,11 @@ func (it item) followed() string {
 	switch {
 	case it.branch != nil:
 		return it.branch.Parameter().Name
+	case it.locus != nil:
+		return it.locus.First().Name
+	case it.corner != nil:
+		first, _ := it.corner.Where.Pair()
+		return first.Name
 	case it.point != nil:
 		return it.point.Parameter
 	case it.special != nil:

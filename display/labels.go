@@ -274,6 +274,14 @@ func (s *sheet) rivals(p plane.Place, own curve, all []curve) float64 {
 	return cost
 }
 
+// usual is the line by which a legend shows a curve.
+func (c curve) usual() lineKind {
+	if c.locus && len(c.runs) > 0 {
+		return c.runs[0].line
+	}
+	return solid
+}
+
 // legend lists the branches in the emptiest corner, and returns how many names
 // found no room.
 func (s *sheet) legend(curves []curve) (left int) {
@@ -297,7 +305,7 @@ func (s *sheet) legend(curves []curve) (left int) {
 			continue
 		}
 		y -= pitch
-		s.StrokeLines(lineStyle(c, solid), []vg.Point{{X: box.Min.X, Y: y + pitch/2}, {X: box.Min.X + swatch, Y: y + pitch/2}})
+		s.StrokeLines(lineStyle(c, c.usual()), []vg.Point{{X: box.Min.X, Y: y + pitch/2}, {X: box.Min.X + swatch, Y: y + pitch/2}})
 		at := vg.Rectangle{Min: vg.Point{X: box.Min.X + swatch + gap, Y: y + 1.5}}
 		s.write(spell(c.label), at, labelSize, ink)
 	}

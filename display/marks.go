@@ -20,11 +20,15 @@ func (f *Figure) addMarks(s *scene) error {
 		m.label = labels[i]
 		s.put(m)
 	}
+	if err := f.addCorners(s); err != nil {
+		return err
+	}
 	for _, it := range f.items {
 		if err := f.addPoint(s, it); err != nil {
 			return err
 		}
 	}
+	f.addNow(s)
 	return nil
 }
 
@@ -41,6 +45,10 @@ func (s *scene) specialMark(special continuation.Special) (mark, error) {
 	switch special := special.(type) {
 	case *continuation.Fold:
 		m.shape, m.away = foldShape, s.turn(special)
+		if s.plane() {
+			m.away = 0
+			m.dx, m.dy = s.edge(special)
+		}
 	case *continuation.BranchPoint:
 		m.shape, m.tangents = crossingShape, s.tangents(special)
 	case *continuation.Multiple:
@@ -170,6 +178,9 @@ func (f *Figure) addPoint(s *scene, it item) error {
 
 func (s *scene) pointLabel(word string, p place) string {
 	value := withUnit(typeset(significant(p.x, 5)), s.x.variable.Unit)
+	if s.plane() {
+		value += ", " + withUnit(typeset(significant(p.y, 5)), s.y.variable.Unit)
+	}
 	if word == "" {
 		return value
 	}

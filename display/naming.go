@@ -7,13 +7,30 @@ import (
 	"brinkline/continuation"
 )
 
-// names returns the labels of the branches: the analyst's, else what tells the
-// branches apart. A branch alone needs none.
+// names returns the labels of the curves: the analyst's, else what tells them
+// apart.
 func (f *Figure) names() []string {
+	names := make([]string, len(f.lines()))
+	copy(names, f.labels)
+	if len(f.labels) > 0 {
+		return names
+	}
+	branches, loci := f.branchNames(), f.locusNames()
+	for i, it := range f.lines() {
+		if it.branch != nil {
+			names[i], branches = branches[0], branches[1:]
+		} else {
+			names[i], loci = loci[0], loci[1:]
+		}
+	}
+	return names
+}
+
+// branchNames says what tells branches apart. A branch alone needs no name.
+func (f *Figure) branchNames() []string {
 	branches := f.branches()
 	names := make([]string, len(branches))
-	copy(names, f.labels)
-	if len(f.labels) > 0 || len(branches) < 2 {
+	if len(branches) < 2 {
 		return names
 	}
 	for i, b := range branches {
@@ -22,6 +39,29 @@ func (f *Figure) names() []string {
 	for i, name := range names {
 		if name == "" || repeated(names, name) > 1 {
 			names[i] = strings.TrimSpace(fmt.Sprintf("branch %d", i+1))
+		}
+	}
+	return names
+}
+
+// locusNames says what loci are made of; of several of a kind, where they began.
+func (f *Figure) locusNames() []string {
+	loci := f.loci()
+	kinds := make([]string, len(loci))
+	for i, l := range loci {
+		kinds[i] = l.Kind() + "s"
+	}
+	names := make([]string, len(loci))
+	for i, l := range loci {
+		names[i] = kinds[i]
+		if repeated(kinds, kinds[i]) > 1 {
+			p := l.Points()[l.Start()]
+			names[i] += " from " + withUnit(typeset(significant(p.First, 5)), l.First().Unit)
+		}
+	}
+	for i := range names {
+		if repeated(names, names[i]) > 1 {
+			names[i] = fmt.Sprintf("%s %d", kinds[i], i+1)
 		}
 	}
 	return names

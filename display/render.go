@@ -53,6 +53,8 @@ func renderOwn(v any) (Bundle, bool) {
 		return v.bundle(), true
 	case *continuation.Branch:
 		return branchBundle(v), true
+	case *continuation.Locus:
+		return locusBundle(v), true
 	case continuation.Progress:
 		return progressBundle(v), true
 	case brancher:
@@ -89,6 +91,14 @@ func card(v any) *Grid {
 		return eventCard(v)
 	case surveyed:
 		return surveyTable(v)
+	case *continuation.LocusSpecial:
+		return cornerCard(v)
+	case *continuation.LocusPoint:
+		return locusPointCard(v)
+	case []*continuation.LocusSpecial:
+		return cornersTable(v)
+	case []*continuation.LocusPoint:
+		return locusPointsTable(v, nil)
 	case []*continuation.Point:
 		return Table(v)
 	}
@@ -132,6 +142,16 @@ func branchBundle(b *continuation.Branch) Bundle {
 	f := branchFigure(b)
 	if err := f.Err(); err != nil {
 		return plainBundle(b.String() + " (no picture: " + err.Error() + ")")
+	}
+	return f.bundle()
+}
+
+// locusBundle is how a locus shows itself, in words when it cannot be drawn.
+func locusBundle(l *continuation.Locus) Bundle {
+	f := Plot(l)
+	f.captioned = true
+	if err := f.Err(); err != nil {
+		return plainBundle(l.String() + " (no picture: " + err.Error() + ")")
 	}
 	return f.bundle()
 }

@@ -15,20 +15,33 @@ type scene struct {
 	curves []curve
 	marks  []mark
 	spans  []span
+	hair   []hairline
 	x, y   side
 }
 
-// A curve is a branch.
+// A curve is a branch, a locus or an eigenvalue.
 type curve struct {
 	runs  []run
 	ink   color.Color
 	label string
+	locus bool
 }
 
 // A run is a part of a curve drawn with one kind of line.
 type run struct {
 	places []place
 	line   lineKind
+	fine   bool // a limit at which no stable steady state is lost
+}
+
+// A hairline is a thin line that is no curve of steady states: an axis, the path of
+// a branch, a local estimate.
+type hairline struct {
+	places []place
+	line   lineKind
+	ink    color.Color
+	counts bool // for the ranges of the axes
+	fan    bool // the oscillation at a Hopf point
 }
 
 type lineKind int
@@ -36,7 +49,8 @@ type lineKind int
 const (
 	solid lineKind = iota
 	dashed
-	dotted // stability was not computed
+	dotted // stability was not computed; neutral saddles of a locus
+	dashDotted
 )
 
 // A place is a point of the figure with the tangent of its branch there, NaN
@@ -51,8 +65,9 @@ func (p place) finite() bool {
 type mark struct {
 	place
 	shape    shape
-	tangents [2]place // dx, dy of both branches at a crossing, NaN where unknown
-	away     float64  // -1 where the curve turns to smaller x, +1 to greater, 0 else
+	tangents [2]place   // dx, dy of both branches at a crossing, NaN where unknown
+	edges    [2][]place // the curve on both sides of a cusp, outwards
+	away     float64    // -1 where the curve turns to smaller x, +1 to greater, 0 else
 	label    string
 }
 
@@ -65,6 +80,12 @@ const (
 	crossingShape              // two tangents
 	ringShape                  // a ring with a tick: a Hopf point
 	tickShape                  // a tick across the branch: an event
+	wedgeShape                 // the two edges that meet: a cusp
+	restShape                  // a ring that rests on a bar: Bogdanov-Takens
+	throughShape               // a ring with a bar through it: fold-Hopf
+	twinShape                  // two rings: Hopf-Hopf
+	halfShape                  // a ring whose hard side is filled: degenerate Hopf
+	crossShape                 // an eigenvalue
 )
 
 // A span is a margin: an arrow from a steady state to a limit.
@@ -96,21 +117,41 @@ func (f *Figure) scene() (*scene, error) {
 		return nil, err
 	}
 	s := &scene{x: x, y: y}
-	names := f.names()
-	for i, b := range f.branches() {
-		c := curve{ink: inks[i%len(inks)], label: names[i]}
-		if c.runs, err = s.runs(b, f.reference()); err != nil {
-			return nil, err
-		}
-		s.curves = append(s.curves, c)
+	if err := f.addCurves(s); err != nil {
+		return nil, err
 	}
 	if err := f.addMarks(s); err != nil {
 		return nil, err
 	}
+	f.addFans(s)
 	if len(s.curves)+len(s.marks) == 0 || !s.anywhere() {
 		return nil, fmt.Errorf("there is nothing to see: %s against %s has no finite value", y.what(), x.what())
 	}
 	return s, nil
+}
+
+// addCurves puts branches and loci into the scene, each with an ink and a name. In
+// a plane of two parameters a branch is the path along which it was followed.
+func (f *Figure) addCurves(s *scene) (err error) {
+	names := f.names()
+	for i, it := range f.lines() {
+		c := curve{ink: inks[len(s.curves)%len(inks)], label: names[i], locus: it.locus != nil}
+		switch {
+		case it.locus != nil:
+			c.runs, err = s.locusRuns(it.locus)
+		case s.plane():
+			err = s.addPath(it.branch, len(f.loci()) == 0)
+		default:
+			c.runs, err = s.runs(it.branch, f.reference())
+		}
+		if err != nil {
+			return err
+		}
+		if c.runs != nil {
+			s.curves = append(s.curves, c)
+		}
+	}
+	return nil
 }
 
 // reference is the number of eigenvalues with positive real part that a balance
@@ -162,7 +203,7 @@ func (s *scene) runs(b *continuation.Branch, reference int) ([]run, error) {
 	for _, stretch := range b.Stretches() {
 		line := lineOf(b, stretch.Unstable, reference)
 		for _, part := range finiteParts(places[stretch.From : stretch.To+1]) {
-			runs = append(runs, run{part, line})
+			runs = append(runs, run{places: part, line: line})
 		}
 	}
 	return joined(runs), nil
@@ -189,7 +230,7 @@ func joined(runs []run) []run {
 // meets reports whether b goes on where a ends, with the same kind of line.
 func meets(a, b run) bool {
 	end, begin := a.places[len(a.places)-1], b.places[0]
-	return a.line == b.line && end.x == begin.x && end.y == begin.y
+	return a.line == b.line && a.fine == b.fine && end.x == begin.x && end.y == begin.y
 }
 
 func finiteParts(places []place) [][]place {
@@ -233,6 +274,13 @@ func (s *scene) values() (xs, ys []float64) {
 	for _, c := range s.curves {
 		for _, r := range c.runs {
 			for _, p := range r.places {
+				put(p)
+			}
+		}
+	}
+	for _, h := range s.hair {
+		for _, p := range h.places {
+			if h.counts {
 				put(p)
 			}
 		}

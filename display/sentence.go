@@ -20,8 +20,10 @@ func (f *Figure) sentence(s *scene) string {
 			parts = append(parts, capital(it.margin.String())+".")
 		}
 	}
-	if text := f.lineMeaning(s); text != "" {
-		parts = append(parts, text)
+	for _, text := range []string{f.lineMeaning(s), f.locusMeaning(s), f.fanMeaning(s)} {
+		if text != "" {
+			parts = append(parts, text)
+		}
 	}
 	return strings.Join(parts, " ")
 }
@@ -36,6 +38,9 @@ func (f *Figure) subject(s *scene) string {
 		}
 		text += fmt.Sprintf(", %s with %s", count(len(b), "branch", "branches"), count(n, "point", "points"))
 	}
+	for _, l := range f.loci() {
+		text += fmt.Sprintf(", locus of %ss with %s", l.Kind(), count(len(l.Points()), "point", "points"))
+	}
 	xs, _ := s.values()
 	low, high := math.Inf(1), math.Inf(-1)
 	for _, v := range xs {
@@ -47,21 +52,22 @@ func (f *Figure) subject(s *scene) string {
 
 // findings lists the special points in full.
 func (f *Figure) findings() string {
-	specials := f.specials()
-	if len(specials) == 0 {
-		if len(f.branches()) == 0 {
+	const most = 12
+	var list []string
+	for _, sp := range f.specials() {
+		list = append(list, f.finding(sp))
+	}
+	for _, c := range f.corners() {
+		list = append(list, cornerText(c))
+	}
+	if len(list) == 0 {
+		if len(f.lines()) == 0 {
 			return ""
 		}
 		return "No special points."
 	}
-	const most = 12
-	var list []string
-	for i, sp := range specials {
-		if i == most {
-			list = append(list, fmt.Sprintf("and %d more", len(specials)-most))
-			break
-		}
-		list = append(list, f.finding(sp))
+	if left := len(list) - most; left > 0 {
+		list = append(list[:most], fmt.Sprintf("and %d more", left))
 	}
 	return capital(strings.Join(list, "; ")) + "."
 }
@@ -92,11 +98,8 @@ func (f *Figure) lineMeaning(s *scene) string {
 	seen := map[lineKind]bool{}
 	for _, c := range s.curves {
 		for _, r := range c.runs {
-			seen[r.line] = true
+			seen[r.line] = seen[r.line] || !c.locus
 		}
-	}
-	if len(seen) == 0 {
-		return ""
 	}
 	var list []string
 	balance, rates := f.settings()

@@ -2,6 +2,7 @@ package display
 
 import (
 	"fmt"
+	"math"
 	"strconv"
 
 	"brinkline/continuation"
@@ -37,7 +38,7 @@ func specialsTable(list []continuation.Special) *Grid {
 	cols := [][]string{make([]string, len(list))}
 	for i, s := range list {
 		cols[0][i] = s.Kind()
-		if w := term(s); w != s.Kind() {
+		if w := nature(s); w != "" {
 			cols[0][i] += " (" + w + ")"
 		}
 	}
@@ -52,16 +53,56 @@ func specialsTable(list []continuation.Special) *Grid {
 	}
 	g.note(states(points, put))
 	beforeAfter(list, put)
+	periods(list, put)
 	digits := make([]string, len(list))
 	for i, s := range list {
 		digits[i] = strconv.Itoa(s.Digits())
 	}
 	put("digits", true, digits)
 	g.fill(cols)
+	for _, s := range list {
+		if _, ok := s.(*continuation.Hopf); ok {
+			g.note("Soft: a small stable oscillation grows from the steady state; hard: an unstable one shrinks onto it.")
+			break
+		}
+	}
 	if parenthesised(cols) {
 		g.note("In parentheses: eigenvalues with positive real part.")
 	}
 	return g
+}
+
+// nature says in a word or two what a special point does, where that is known.
+func nature(s continuation.Special) string {
+	switch s := s.(type) {
+	case *continuation.BranchPoint:
+		return s.Name()
+	case *continuation.Multiple:
+		return fmt.Sprintf("%d null vectors", s.Dimension)
+	case *continuation.Hopf:
+		switch {
+		case math.IsNaN(s.Lyapunov) || min(s.UnstableBefore, s.UnstableAfter) > 0:
+			return ""
+		case s.Soft():
+			return "soft"
+		default:
+			return "hard"
+		}
+	}
+	return ""
+}
+
+// periods puts a column for the periods of Hopf points, if there are any.
+func periods(list []continuation.Special, put putColumn) {
+	cells, any := make([]string, len(list)), false
+	for i, s := range list {
+		if h, ok := s.(*continuation.Hopf); ok {
+			cells[i], any = significant(h.Period, stateDigits), true
+		}
+	}
+	if any {
+		put("period", true, cells)
+	}
 }
 
 func (g *Grid) fill(cols [][]string) {
@@ -266,9 +307,9 @@ func remarks(b *continuation.Branch) []string {
 // sensitivitiesTable ranks the other parameters by how much the limit moves with
 // a percent of each.
 func sensitivitiesTable(s *continuation.Sensitivities) *Grid {
-	q := s.Fold.Parameter()
+	q := s.Limit.Parameter()
 	g := &Grid{
-		caption: fmt.Sprintf("How the %s moves with the other parameters, to first order", briefly(s.Fold)),
+		caption: fmt.Sprintf("How the %s moves with the other parameters, to first order", briefly(s.Limit)),
 		columns: []column{{"parameter", false}, {"now", true}, {"shift of " + q.Name + " per unit", true}, {"", false}, {"percent per percent", true}},
 	}
 	for _, one := range ranked(s.List) {

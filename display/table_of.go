@@ -13,8 +13,8 @@ import (
 	"brinkline/continuation"
 )
 
-// Table makes a table of a value: the special points of a branch (or of a slice
-// of folds or other special points), one row each; the points of a slice;
+// Table makes a table of a value: the special points of a branch or a locus (or of a
+// slice of folds or other special points), one row each; the points of a slice;
 // sensitivities; a slice of structs with a column for each field; a map, a slice
 // or a matrix of numbers.
 func Table(v any) *Grid {
@@ -26,6 +26,8 @@ func Table(v any) *Grid {
 		return v
 	case *continuation.Branch:
 		return branchTable(v)
+	case *continuation.Locus:
+		return locusTable(v)
 	case brancher:
 		return branchTable(v.Branch())
 	case surveyed:
@@ -44,7 +46,7 @@ func Table(v any) *Grid {
 	return reflected(v)
 }
 
-// Points makes a table of all points of a branch, or of a slice of points.
+// Points makes a table of all points of a branch or a locus, or of a slice of points.
 func Points(v any) *Grid {
 	if isNil(v) {
 		return &Grid{err: fmt.Errorf("there are no points to make a table of (%s)", nothing(v))}
@@ -52,6 +54,10 @@ func Points(v any) *Grid {
 	switch v := v.(type) {
 	case *continuation.Branch:
 		return pointsTable(v.Points(), v)
+	case *continuation.Locus:
+		return locusPointsTable(v.Points(), v)
+	case []*continuation.LocusPoint:
+		return locusPointsTable(v, nil)
 	case brancher:
 		return Points(v.Branch())
 	case surveyed:
@@ -59,7 +65,7 @@ func Points(v any) *Grid {
 	case []*continuation.Point:
 		return pointsTable(v, nil)
 	}
-	return &Grid{err: fmt.Errorf("Points wants a branch or a slice of points, not a %T", v)}
+	return &Grid{err: fmt.Errorf("Points wants a branch, a locus or a slice of points, not a %T", v)}
 }
 
 // surveyTable shows the steady states that a survey found, and how hard it looked.
@@ -115,7 +121,7 @@ func reflected(v any) *Grid {
 			return listTable(r)
 		}
 	}
-	return &Grid{err: fmt.Errorf("there is no table of a %T; Table takes branches, slices, maps and matrices", v)}
+	return &Grid{err: fmt.Errorf("there is no table of a %T; Table takes branches, loci, slices, maps and matrices", v)}
 }
 
 func structTable(list reflect.Value, elem reflect.Type) *Grid {

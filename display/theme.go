@@ -39,6 +39,8 @@ func darker(clr color.Color) color.Color {
 
 const (
 	lineWidth   = 1.5
+	fineWidth   = 0.9
+	hairWidth   = 0.6
 	barWidth    = 3.0
 	axisWidth   = 0.75
 	bodySize    = 9.0 // axis labels, legend, title
@@ -56,6 +58,9 @@ const (
 var (
 	dashes = []vg.Length{5, 3}
 	dots   = []vg.Length{1.5, 2.5}
+
+	dashesAndDots = []vg.Length{7, 2.5, 1.5, 2.5}
+	fineDashes    = []vg.Length{3, 2}
 )
 
 // face returns the sans-serif face of that size, whose metrics lay out pictures.
