@@ -10,7 +10,8 @@ import (
 // publisher is an XPUB socket that sees each subscription.
 type publisher struct {
 	*socket
-	subscribed func(p *peer, topic string) // called on every subscription
+	welcome    func(p *peer, topic string) // called first of all on every subscription
+	subscribed func()                      // called then
 
 	mu     sync.Mutex               // orders messages the same way for all peers
 	topics map[*peer]map[string]int // subscriptions and how often each was made
@@ -45,8 +46,17 @@ func (p *publisher) cmd(from *peer, c zmq4.Cmd) {
 	}
 }
 
+// subscribe changes what a peer gets. Nothing reaches it before its welcome.
 func (p *publisher) subscribe(from *peer, topic string, on bool) {
+	p.count(from, topic, on)
+	if on {
+		p.subscribed()
+	}
+}
+
+func (p *publisher) count(from *peer, topic string, on bool) {
 	p.mu.Lock()
+	defer p.mu.Unlock()
 	topics := p.topics[from]
 	if topics == nil {
 		topics = make(map[string]int)
@@ -54,12 +64,9 @@ func (p *publisher) subscribe(from *peer, topic string, on bool) {
 	}
 	if on {
 		topics[topic]++
+		p.welcome(from, topic)
 	} else if topics[topic]--; topics[topic] <= 0 {
 		delete(topics, topic)
-	}
-	p.mu.Unlock()
-	if on {
-		p.subscribed(from, topic)
 	}
 }
 

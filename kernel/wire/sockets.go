@@ -59,6 +59,9 @@ func open(c *Connection, config Config, t timeouts) (*Sockets, error) {
 	if err != nil {
 		return nil, err
 	}
+	if config.Subscribed == nil {
+		config.Subscribed = func() {}
+	}
 	if config.Log == nil {
 		config.Log = log.Default()
 	}
@@ -71,7 +74,8 @@ func open(c *Connection, config Config, t timeouts) (*Sockets, error) {
 		return &socket{name: name, listener: listeners[name], patience: t, logf: config.Log.Printf}
 	}
 	s.iopub = newPublisher(base("iopub"))
-	s.iopub.subscribed = s.welcome
+	s.iopub.welcome = s.welcome
+	s.iopub.subscribed = config.Subscribed
 	s.heartbeat = echo(base("heartbeat"))
 	for ch := range s.routers {
 		s.routers[ch] = s.router(base(Channel(ch).String()), Channel(ch))
@@ -164,9 +168,6 @@ func (s *Sockets) welcome(p *peer, subscription string) {
 		topic = []byte(subscription) // or the client would filter it out
 	}
 	p.offer(append([][]byte{topic}, frames...))
-	if s.config.Subscribed != nil {
-		s.config.Subscribed()
-	}
 }
 
 // Publish sends a message to all subscribers. The parent is the request that
