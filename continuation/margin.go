@@ -1,15 +1,17 @@
 package continuation
 
 import (
+	"cmp"
 	"fmt"
 	"math"
+	"slices"
 )
 
 // A Margin is how far the parameter can still be pushed from a steady state
-// before a fold is met.
+// before a limit is met.
 type Margin struct {
 	From      *Point
-	To        *Fold
+	To        Limit
 	Parameter Parameter // with its value now
 	// Absolute is λ* - λ, in the parameter's unit: negative for a limit below.
 	Absolute float64
@@ -17,26 +19,31 @@ type Margin struct {
 	Percent float64
 }
 
-// MarginTo returns how far it is from this steady state to a fold, along the
-// parameter in which the fold was found. All other parameters must have the same
-// values at both.
-func (p *Point) MarginTo(limit *Fold) (*Margin, error) {
-	if limit == nil {
+// MarginTo returns how far it is from this steady state to a limit, along the
+// parameter in which the limit was found. All other parameters must have the same
+// values at both, and the steady states that meet at a fold must lie on this side of
+// it.
+func (p *Point) MarginTo(limit Limit) (*Margin, error) {
+	if isNilLimit(limit) {
 		return nil, fmt.Errorf("there is no limit to measure to (nil)")
 	}
-	if p.model != limit.point.model {
-		return nil, fmt.Errorf("the steady state and the fold belong to different models")
+	at := limit.Where()
+	if p.model != at.model {
+		return nil, fmt.Errorf("the steady state and the %s belong to different models", limit.Kind())
 	}
-	j := limit.point.free
+	j := at.free
 	for i, v := range p.Parameters {
-		if i != j && v != limit.point.Parameters[i] {
+		if i != j && v != at.Parameters[i] {
 			q := p.model.parameters[i]
-			return nil, fmt.Errorf("%s is %s at the steady state and %s at the fold: a margin is along one parameter",
-				q.Name, withUnit(v, q.Unit), withUnit(limit.point.Parameters[i], q.Unit))
+			return nil, fmt.Errorf("%s is %s at the steady state and %s at the %s: a margin is along one parameter",
+				q.Name, withUnit(v, q.Unit), withUnit(at.Parameters[i], q.Unit), limit.Kind())
 		}
 	}
 	now := p.Parameters[j]
 	m := &Margin{From: p, To: limit, Parameter: Parameter{p.model.parameters[j].Variable, now}}
+	if err := m.side(); err != nil {
+		return nil, err
+	}
 	m.Absolute = limit.Value() - now
 	m.Percent = math.NaN()
 	if now != 0 {
@@ -45,14 +52,29 @@ func (p *Point) MarginTo(limit *Fold) (*Margin, error) {
 	return m, nil
 }
 
+// side refuses a fold beyond which the steady state already lies.
+func (m *Margin) side() error {
+	f, ok := m.To.(*Fold)
+	if !ok || f.Greatest() == (m.Parameter.Value <= f.Value()) {
+		return nil
+	}
+	word := "least"
+	if f.Greatest() {
+		word = "greatest"
+	}
+	q := m.Parameter
+	return fmt.Errorf("the %s is the %s %s of the steady states that meet there, and %s now is beyond it: the steady state in use is none of them; take the limit on its own way (LimitAbove, LimitBelow)",
+		f.Summary(), word, q.Name, withUnit(q.Value, q.Unit))
+}
+
 // Digits returns how many digits of the margin can be relied on.
 func (m *Margin) Digits() int {
-	return reliableDigits(m.Absolute, m.To.Uncertainty)
+	return reliableDigits(m.Absolute, m.To.uncertainty())
 }
 
 // String says the margin in one line.
 func (m *Margin) String() string {
-	text := fmt.Sprintf("margin in %s: %s", m.Parameter.Name, FormatUncertain(m.Absolute, m.To.Uncertainty, 6))
+	text := fmt.Sprintf("margin in %s: %s", m.Parameter.Name, FormatUncertain(m.Absolute, m.To.uncertainty(), 6))
 	if m.Parameter.Unit != "" {
 		text += " " + m.Parameter.Unit
 	}
@@ -74,16 +96,31 @@ func reliableDigits(value, uncertainty float64) int {
 	return max(0, min(15, int(math.Floor(-math.Log10(2*uncertainty/size)))))
 }
 
-// Sensitivities say how a fold moves with every other parameter, to first order.
+// Sensitivities say how a limit moves with every other parameter, to first order.
 type Sensitivities struct {
-	Fold *Fold
-	List []Sensitivity // in the order of the model's parameters
+	Limit Limit
+	List  []Sensitivity // in the order of the model's parameters
+}
+
+// Ranked returns the sensitivities by falling size of the elasticity; where the limit
+// is at 0, of value times slope.
+func (s *Sensitivities) Ranked() []Sensitivity {
+	list := slices.Clone(s.List)
+	weight := func(one Sensitivity) float64 {
+		if w := math.Abs(one.Elasticity); !math.IsNaN(w) {
+			return w
+		}
+		return math.Abs(one.Value * one.Slope)
+	}
+	slices.SortStableFunc(list, func(a, b Sensitivity) int { return cmp.Compare(weight(b), weight(a)) })
+	return list
 }
 
 // A Sensitivity is that of a limit λ* to another parameter p.
 type Sensitivity struct {
 	Parameter
-	// Slope is dλ*/dp = -(wᵀ f_p)/(wᵀ f_λ), units of λ per unit of p.
+	// Slope is dλ*/dp, units of λ per unit of p: -(wᵀ f_p)/(wᵀ f_λ) of a fold, -μ_p/μ_λ
+	// of a Hopf point with μ the real part of the pair.
 	Slope float64
 	// Elasticity is (p/λ*) dλ*/dp: percent of λ* for a percent of p; NaN where λ*
 	// is 0.
@@ -91,22 +128,26 @@ type Sensitivity struct {
 }
 
 // Sensitivities returns how the fold moves with every other parameter.
-func (f *Fold) Sensitivities() (*Sensitivities, error) {
-	s := &Sensitivities{Fold: f}
-	for j, slope := range f.sensitivities {
-		if j == f.point.free {
+func (f *Fold) Sensitivities() (*Sensitivities, error) { return sensitivitiesOf(f, f.sensitivities) }
+
+// sensitivitiesOf makes sensitivities of slopes for all parameters.
+func sensitivitiesOf(limit Limit, slopes []float64) (*Sensitivities, error) {
+	s := &Sensitivities{Limit: limit}
+	at := limit.Where()
+	for j, slope := range slopes {
+		if j == at.free {
 			continue
 		}
-		q := f.point.model.parameters[j]
-		q.Value = f.point.Parameters[j]
+		q := at.model.parameters[j]
+		q.Value = at.Parameters[j]
 		e := math.NaN()
-		if f.Value() != 0 {
-			e = slope * q.Value / f.Value()
+		if limit.Value() != 0 {
+			e = slope * q.Value / limit.Value()
 		}
 		s.List = append(s.List, Sensitivity{q, slope, e})
 	}
 	if len(s.List) == 0 {
-		return nil, fmt.Errorf("the model has no parameter besides %s", f.point.Parameter)
+		return nil, fmt.Errorf("the model has no parameter besides %s", at.Parameter)
 	}
 	return s, nil
 }
