@@ -271,3 +271,16 @@ func BenchmarkValueAndJacobian(b *testing.B) {
 		})
 	}
 }
+
+// First use of a model: parse and check its text, record it, derive f and J. What
+// the checker needs to know of package math is read once, before.
+func BenchmarkFirstUse(b *testing.B) {
+	for _, bench := range benchmarks {
+		b.Run(bench.name, func(b *testing.B) {
+			b.ReportAllocs()
+			for range b.N {
+				machineOf(b, bench.text, bench.n, bench.params, bench.sparse)
+			}
+		})
+	}
+}

@@ -5,6 +5,8 @@ import "math"
 // Blame says which line of the model makes a NaN or an infinity at x and p, and
 // by which operation ("line 7: math.Log is NaN"). It is empty where f is finite.
 func (p *Program) Blame(x, q []float64) string {
+	p.mu.Lock()
+	defer p.mu.Unlock()
 	need := p.g.live(p.out)
 	values := make([]float64, len(need))
 	for id := range need {

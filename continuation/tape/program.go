@@ -76,6 +76,8 @@ func (p *Program) Guards() []string {
 
 // Operations returns the number of operations of f.
 func (p *Program) Operations() int {
+	p.mu.Lock()
+	defer p.mu.Unlock()
 	count := 0
 	for id, need := range p.g.live(p.out) {
 		if need && !p.g.nodes[id].op.leaf() {

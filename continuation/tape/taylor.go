@@ -16,8 +16,8 @@ import (
 type Taylor struct {
 	p     *Program
 	free  int
-	order int // the highest that there is room for
-	nodes []int32
+	order int        // the highest that there is room for
+	ops   []node     // what is needed, in the order of evaluation
 	slope [][3]int32 // by node: its derivative with respect to each operand
 	at    []int32    // by node: where its coefficients lie, -1 for none
 	c     []float64  // order+1 coefficients for each node
@@ -32,7 +32,7 @@ func (p *Program) NewTaylor(free, order int) (*Taylor, error) {
 	if err := t.collect(); err != nil {
 		return nil, err
 	}
-	t.c = make([]float64, len(t.nodes)*(order+1))
+	t.c = make([]float64, len(t.ops)*(order+1))
 	return t, nil
 }
 
@@ -133,8 +133,8 @@ func (t *Taylor) settle(need []bool, slopes map[int32][3]int32) {
 	for id := range need {
 		t.at[id] = none
 		if need[id] {
-			t.at[id] = int32(len(t.nodes))
-			t.nodes = append(t.nodes, int32(id))
+			t.at[id] = int32(len(t.ops))
+			t.ops = append(t.ops, t.p.g.nodes[id])
 			s, ok := slopes[int32(id)]
 			if !ok {
 				s = [3]int32{none, none, none}
@@ -155,9 +155,8 @@ func (t *Taylor) row(id int32) []float64 {
 // Lower coefficients must have been expanded before, from the same path. q holds
 // all parameters; where a parameter is free, path[0][n] is its value.
 func (t *Taylor) Expand(k int, path [][]float64, q, out []float64) {
-	for i, id := range t.nodes {
-		n := t.p.g.nodes[id]
-		v := t.row(id)
+	for i, n := range t.ops {
+		v := t.c[i*(t.order+1) : (i+1)*(t.order+1)]
 		if n.op.leaf() {
 			v[k] = t.leaf(n, k, path, q)
 			continue
