@@ -26,7 +26,11 @@ func builtinText(x any) string {
 		return builtinFloat(v.Float())
 	case reflect.Complex64, reflect.Complex128:
 		c := v.Complex()
-		return "(" + builtinFloat(real(c)) + builtinFloat(imag(c)) + "i)"
+		im := builtinFloat(imag(c))
+		if im[0] != '-' && im[0] != '+' {
+			im = "+" + im
+		}
+		return "(" + builtinFloat(real(c)) + im + "i)"
 	case reflect.Slice:
 		return fmt.Sprintf("[%d/%d]0x%x", v.Len(), v.Cap(), v.Pointer())
 	case reflect.Pointer, reflect.Map, reflect.Chan, reflect.Func, reflect.UnsafePointer:
@@ -43,18 +47,5 @@ func builtinText(x any) string {
 	return fmt.Sprint(printable(x))
 }
 
-// builtinFloat writes +1.500000e+000: six decimals and three digits of exponent.
-func builtinFloat(f float64) string {
-	s := strconv.FormatFloat(f, 'e', 6, 64)
-	mantissa, exp, ok := strings.Cut(s, "e")
-	if !ok {
-		if f > 0 {
-			return "+Inf"
-		}
-		return s
-	}
-	if f >= 0 && mantissa[0] != '-' {
-		mantissa = "+" + mantissa
-	}
-	return mantissa + "e" + exp[:1] + strings.Repeat("0", max(0, 3-len(exp[1:]))) + exp[1:]
-}
+// builtinFloat writes the shortest form.
+func builtinFloat(f float64) string { return strconv.FormatFloat(f, 'g', -1, 64) }

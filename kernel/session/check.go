@@ -217,7 +217,8 @@ func (u *unit) setAside(d *def, fault *types.Error) bool {
 func (u *unit) mayCome(f *types.Error) bool {
 	if missing, ok := strings.CutPrefix(f.Msg, "undefined: "); ok {
 		d := u.next.byName(missing)
-		return d != nil && d.broken != nil || !strings.HasPrefix(u.nearestName(missing, f), "did you mean")
+		near, found := strings.CutPrefix(strings.TrimSuffix(u.nearestName(missing, f), "?"), "did you mean ")
+		return d != nil && d.broken != nil || !found || !looksLikeSlip(missing, near)
 	}
 	for _, part := range []string{"missing method ", "has no field or method ", "impossible type switch case", "undefined array length"} {
 		if strings.Contains(f.Msg, part) {
@@ -225,6 +226,21 @@ func (u *unit) mayCome(f *types.Error) bool {
 		}
 	}
 	return false
+}
+
+// looksLikeSlip reports whether a word is another one mistyped, rather than a name of its own such as f2 beside f1.
+func looksLikeSlip(word, near string) bool {
+	digits := func(r rune) rune {
+		if r >= '0' && r <= '9' {
+			return -1
+		}
+		return r
+	}
+	if strings.Map(digits, word) == strings.Map(digits, near) || strings.EqualFold(word, near) {
+		return false
+	}
+	n := len([]rune(word))
+	return n >= 4 && distance(word, near) <= 1+n/8
 }
 
 // bind finds the variables that the cell binds at its top level and how that changes the table.

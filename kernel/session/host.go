@@ -47,6 +47,8 @@ func (s *Session) hostFuncs() map[string]any {
 		"Print":      func(a ...any) { s.stderr(builtinPrint(a, "")) },
 		"Println":    func(a ...any) { s.stderr(builtinPrint(a, " ") + "\n") },
 		"ErrorsAs":   s.errorsAs,
+		"NeedRoom":   s.needRoom,
+		"SameChan":   func(a, b any) bool { return reflect.ValueOf(a).Pointer() == reflect.ValueOf(b).Pointer() },
 		"Depth":      s.checkDepth,
 		"Go":         s.goroutine,
 		"Check":      s.checkError,

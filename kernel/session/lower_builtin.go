@@ -131,6 +131,9 @@ func (l *lowerer) appendCall(e *ast.CallExpr) ast.Expr {
 
 func (l *lowerer) makeCall(e *ast.CallExpr) ast.Expr {
 	args := []ast.Expr{l.typ(l.typeOf(e))}
+	if ch, ok := l.typeOf(e).Underlying().(*types.Chan); ok && ch.Dir() != types.SendRecv {
+		args[0] = l.typ(types.NewChan(types.SendRecv, ch.Elem()))
+	}
 	for _, a := range e.Args[1:] {
 		x := l.expr(a)
 		if l.u.info.Types[a].Value != nil {
@@ -138,10 +141,15 @@ func (l *lowerer) makeCall(e *ast.CallExpr) ast.Expr {
 		} else if !types.Identical(l.typeOf(a), types.Typ[types.Int]) {
 			x = call(ast.NewIdent("int"), x)
 		}
+		if s, ok := l.typeOf(e).Underlying().(*types.Slice); ok {
+			x = hostCall("NeedRoom", x, intLit(int(sizes.Sizeof(s.Elem()))))
+		}
 		args = append(args, x)
 	}
 	return call(ast.NewIdent("make"), args...)
 }
+
+var sizes = types.SizesFor("gc", "amd64")
 
 // newCall lowers new(T) and new(value).
 func (l *lowerer) newCall(e *ast.CallExpr) ast.Expr {

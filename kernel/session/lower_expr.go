@@ -165,7 +165,9 @@ func (l *lowerer) comparison(e *ast.BinaryExpr) ast.Expr {
 	switch t.Underlying().(type) {
 	case *types.Struct, *types.Array:
 		return negate(hostCall("Same", l.expr(e.X), l.expr(e.Y)), e.Op)
-	case *types.Chan, *types.Pointer:
+	case *types.Chan:
+		return negate(hostCall("SameChan", l.expr(e.X), l.expr(e.Y)), e.Op)
+	case *types.Pointer:
 		return negate(hostCall("Same", l.expr(e.X), l.expr(e.Y)), e.Op)
 	}
 	return paren(&ast.BinaryExpr{X: l.exprTo(e.X, t), Op: e.Op, Y: l.exprTo(e.Y, t)})

@@ -464,8 +464,10 @@ func (l *lowerer) caseCond(tag ast.Expr, tagType types.Type, e ast.Expr) ast.Exp
 		return hostCall("Equal", l.convert(tag, tagType, anyT), l.exprTo(e, anyT))
 	}
 	switch tagType.Underlying().(type) {
-	case *types.Struct, *types.Array, *types.Pointer, *types.Chan:
+	case *types.Struct, *types.Array, *types.Pointer:
 		return hostCall("Same", tag, l.expr(e))
+	case *types.Chan:
+		return hostCall("SameChan", tag, l.expr(e))
 	}
 	return paren(&ast.BinaryExpr{X: tag, Op: token.EQL, Y: l.exprTo(e, tagType)})
 }

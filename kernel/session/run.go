@@ -11,6 +11,7 @@ import (
 	"strconv"
 	"strings"
 	"sync"
+	"sync/atomic"
 	"time"
 
 	"github.com/traefik/yaegi/interp"
@@ -29,21 +30,25 @@ type run struct {
 	values   []any           // of the last expression
 	assigned map[string]bool // variables that the cell has bound so far
 	progress progressMeter
+	full     atomic.Bool   // stopped for its memory
+	ended    chan struct{} // closed when the cell has ended; goroutines of it may go on
 }
 
 func (s *Session) begin(ctx context.Context, src *source, out Output) *run {
-	r := &run{src: src, out: out, assigned: map[string]bool{}}
+	r := &run{src: src, out: out, assigned: map[string]bool{}, ended: make(chan struct{})}
 	r.ctx, r.cancel = context.WithCancel(ctx)
 	r.progress.run = r
 	s.mu.Lock()
 	s.current = r
 	s.mu.Unlock()
 	s.machine.complain.take()
+	go s.watchMemory(r)
 	return r
 }
 
 // end closes a run. Its context stays: goroutines of the cell may outlive it.
 func (s *Session) end(r *run) {
+	close(r.ended)
 	s.mu.Lock()
 	defer s.mu.Unlock()
 	if s.current == r {
@@ -69,6 +74,9 @@ func (s *Session) outcome(r *run, err error, abandoned bool) *Error {
 	frames := s.machine.complain.take()
 	if s.machine.tooDeep.Load() {
 		return s.errorAt(s.placeOf(*s.pos), "Panic", errTooDeep.Error()).withCaller(s, nil)
+	}
+	if r.full.Load() {
+		return s.memoryError()
 	}
 	if abandoned {
 		e := s.interruptedError()

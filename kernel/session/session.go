@@ -23,6 +23,8 @@ type Options struct {
 	// Still leaves out the live displays of long work. Whether one appears depends on how fast the machine is, so a run that
 	// nobody watches is still: its notebook has the same bytes everywhere.
 	Still bool
+	// MemoryLimit is the number of bytes of live values at which a cell is stopped; 0 means half of the machine's memory.
+	MemoryLimit uint64
 }
 
 // An Output takes what a cell shows while it runs. It must be safe for concurrent use.
@@ -55,6 +57,7 @@ type Result struct {
 // A Session holds what cells have defined. Run takes one cell at a time; the other methods may be called while it runs.
 type Session struct {
 	still    bool // no live displays
+	limit    uint64
 	running  sync.Mutex
 	tab      atomic.Pointer[table]
 	importer *export.Importer
@@ -85,9 +88,13 @@ type Session struct {
 func New(o Options) (*Session, error) {
 	s := &Session{
 		still:    o.Still,
+		limit:    o.MemoryLimit,
 		importer: export.NewImporter(), rtypes: newRtypes(), override: map[string]reflect.Value{}, offered: map[string]bool{},
 		bound:  map[string]reflect.Value{},
 		strays: map[int64]*run{}, knownSet: map[string]bool{}, modelled: map[string]modelled{}, shorts: map[string]string{},
+	}
+	if s.limit == 0 {
+		s.limit = defaultMemoryLimit()
 	}
 	s.tab.Store(&table{defs: map[string]*def{}, vars: map[string]*variable{}, imports: map[string]string{}})
 	for name, f := range s.overrides() {
