@@ -284,3 +284,22 @@ func BenchmarkFirstUse(b *testing.B) {
 		})
 	}
 }
+
+// Batches of 512 points, the time of a point against that of compiled Go.
+func BenchmarkBatch(b *testing.B) {
+	const count = 512
+	for _, bench := range benchmarks[:2] {
+		b.Run(bench.name, func(b *testing.B) {
+			m := machineOf(b, bench.text, bench.n, bench.params, bench.sparse).code.NewBatch()
+			x := values(count * bench.n)
+			out, f, j := make([]float64, count*m.code.slots), make([]float64, bench.n), make([]float64, bench.n*bench.n)
+			ratio(b, func() { m.Run(count, x, bench.p, out) }, func() {
+				for i := range count {
+					u := x[i*bench.n : (i+1)*bench.n]
+					bench.f(u, bench.p, f)
+					bench.j(u, bench.p, j)
+				}
+			})
+		})
+	}
+}

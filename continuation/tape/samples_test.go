@@ -61,3 +61,47 @@ func sampleState(rng *rand.Rand) []float64 {
 	}
 	return x
 }
+
+// A batch gives the bits of a machine, point by point.
+func TestBatchesGiveTheBitsOfMachines(t *testing.T) {
+	const count = 150
+	rng := rand.New(rand.NewPCG(5, 6))
+	q := samples.Params{A: 1.25, B: -0.5, Table: [4]float64{1, -2, 0.5, 3}, N: 3}
+	own := []float64{1.25, -0.5, 1, -2, 0.5, 3}
+	var x, p []float64
+	for range count {
+		x = append(x, sampleState(rng)...)
+		p = append(p, own...)
+	}
+	for name := range samples.Models {
+		src, err := tape.Parse(name, samples.Source)
+		if err != nil {
+			t.Fatal(err)
+		}
+		program, err := tape.Record(src, tape.Settings{States: 3, Params: reflect.ValueOf(q)})
+		if err != nil {
+			t.Fatal(err)
+		}
+		code := program.ValueAndJacobian(0)
+		m, b := code.NewMachine(), code.NewBatch()
+		k := len(m.Out())
+		out, shared := make([]float64, count*k), make([]float64, count*k)
+		failed := map[int]bool{}
+		for _, i := range b.Run(count, x, p, out) {
+			failed[i] = true
+		}
+		b.Run(count, x, own, shared)
+		for i := range count {
+			if m.Run(x[3*i:3*i+3], own) == failed[i] {
+				t.Fatalf("%s: point %d: the guards hold in the machine %v", name, i, failed[i])
+			}
+			for e, v := range m.Out() {
+				for _, w := range []float64{out[i*k+e], shared[i*k+e]} {
+					if math.Float64bits(v) != math.Float64bits(w) && !(math.IsNaN(v) && math.IsNaN(w)) {
+						t.Fatalf("%s: point %d: output %d is %v in the batch, %v in the machine", name, i, e, w, v)
+					}
+				}
+			}
+		}
+	}
+}
