@@ -3,7 +3,8 @@
 usage: client.py nbclient|nbconvert IN.ipynb OUT.ipynb
 
 Front ends merge adjacent streams of one name and show no times; the file is
-brought into that form.
+brought into that form. The live displays of long work, which are there or not
+as the machine is slow or fast, are left out.
 """
 
 import os
@@ -31,9 +32,15 @@ def by_nbconvert(path, out):
     return nbformat.read(out, as_version=nbformat.NO_CONVERT)
 
 
+def is_live(out):
+    return out.get("metadata", {}).get("brinkline", {}).get("progress", False)
+
+
 def merged(outputs):
     kept = []
     for out in outputs:
+        if is_live(out):
+            continue
         if kept and out.output_type == "stream" == kept[-1].output_type and out.name == kept[-1].name:
             kept[-1].text += out.text
         else:
