@@ -113,12 +113,14 @@ func pointCard(p *continuation.Point) *Grid {
 		}
 	}
 	g.heading("stability")
-	g.say("in words", stabilitySentence(p))
+	g.say(inWords, stabilitySentence(p))
 	if len(p.Eigenvalues) > 0 {
 		g.say("eigenvalues of f_x", eigenvalueText(p.Eigenvalues))
 	}
 	return g
 }
+
+const inWords = "in words"
 
 // list adds a row for each variable, leaving out the middle of many.
 func (g *Grid) list(vars []continuation.Variable, values []float64, digits int) {

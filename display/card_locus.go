@@ -10,7 +10,7 @@ import (
 // cornerCard shows a special point of a locus: where, its coefficients with their
 // normalisation, and what it means.
 func cornerCard(c *continuation.LocusSpecial) *Grid {
-	first, second := c.Where.Pair()
+	first, second := pairOf(c.Where)
 	g := newCard(fmt.Sprintf("%s of %s in %s and %s", capital(c.Kind), c.Where.Model().Name(), first.Name, second.Name), "value")
 	for _, q := range []continuation.Parameter{first, second} {
 		g.add(q.Label(), reliable(q.Value, cornerDigits))
@@ -65,7 +65,12 @@ func settled(values []complex128) []complex128 {
 // locusPointCard shows a fold or Hopf point on a locus.
 func locusPointCard(p *continuation.LocusPoint) *Grid {
 	g := pointCard(p.Point)
-	first, second := p.Pair()
+	first, second := pairOf(p)
 	g.caption = fmt.Sprintf("Point of a locus of %s at %s, %s", p.Model().Name(), labelled(first.Variable, first.Value, stateDigits), labelled(second.Variable, second.Value, stateDigits))
+	for i, r := range g.rows {
+		if r.text && r.cells[0] == inWords {
+			g.rows[i].cells[1] = fmt.Sprintf("critical: f_x has eigenvalues on the imaginary axis here, or two of opposite sign; %s besides with positive real part", count(p.Unstable, "eigenvalue", "eigenvalues"))
+		}
+	}
 	return g
 }

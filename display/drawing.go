@@ -19,6 +19,7 @@ type sheet struct {
 	draw.Canvas
 	plot *plot.Plot
 	room plane.Room
+	hair []hairline // whose lines no curve's name may be taken for
 }
 
 // Plot draws the scene: lines first, then marks, then labels where room is left.
@@ -28,7 +29,7 @@ func (d *drawing) Plot(c draw.Canvas, p *plot.Plot) {
 	frame.Min.Y += 3
 	frame.Max.X += cropRight - 3
 	frame.Max.Y += cropTop - 3
-	s := &sheet{Canvas: c, plot: p, room: plane.Room{Frame: frame}}
+	s := &sheet{Canvas: c, plot: p, room: plane.Room{Frame: frame}, hair: d.scene.hair}
 	for _, h := range d.scene.hair {
 		s.hairline(h)
 	}
@@ -81,6 +82,19 @@ func (s *sheet) hairline(h hairline) {
 	style.Width = hairWidth
 	if h.line == dashed {
 		style.Dashes = fineDashes
+	}
+	if h.across {
+		a, b := s.at(h.places[0]), s.at(h.places[1])
+		if a.X == b.X {
+			a.Y, b.Y = s.Min.Y, s.Max.Y
+		} else {
+			a.X, b.X = s.Min.X, s.Max.X
+		}
+		if s.Contains(a) && s.Contains(b) {
+			s.StrokeLines(style, []vg.Point{a, b})
+			s.room.BlockLine([]vg.Point{a, b})
+		}
+		return
 	}
 	for _, line := range s.lines(run{places: h.places}) {
 		s.StrokeLines(style, line)

@@ -112,15 +112,16 @@ func (f *Figure) realParts() (*scene, error) {
 	}
 	x.log, x.shown = f.logX, f.rangeX
 	s := &scene{x: x, y: side{label: "Real part of eigenvalue", log: f.logY, shown: f.rangeY}}
-	xs := make([]float64, len(b.Points()))
+	xs, along := make([]float64, len(b.Points())), make([]place, len(b.Points()))
 	for i, p := range b.Points() {
 		if xs[i], err = x.value(p); err != nil {
 			return nil, err
 		}
+		along[i] = place{x: xs[i], dx: x.slope(p), dy: math.NaN()}
 	}
 	e.shown = e.enough()
 	for k := range e.shown {
-		s.curves = append(s.curves, curve{ink: ink, runs: e.line(k, xs)})
+		s.curves = append(s.curves, curve{ink: ink, runs: e.line(k, along)})
 	}
 	specials := b.Specials()
 	labels := f.specialLabels(specials)
@@ -151,11 +152,12 @@ func (e *eigenvalues) enough() int {
 }
 
 // line is the eigenvalue of one rank along the branch; a pair is drawn once.
-func (e *eigenvalues) line(k int, xs []float64) []run {
+func (e *eigenvalues) line(k int, along []place) []run {
 	var runs []run
-	for i := 1; i < len(xs); i++ {
+	places := e.places(k, along)
+	for i := 1; i < len(places); i++ {
 		a, b := e.spread[i-1], e.spread[i]
-		r := run{places: []place{at(xs[i-1], real(a[k])), at(xs[i], real(b[k]))}}
+		r := run{places: places[i-1 : i+1 : i+1]}
 		if paired(a, k) && paired(b, k) {
 			r.line = dashDotted
 			if second(a, k) && second(b, k) {
@@ -167,6 +169,21 @@ func (e *eigenvalues) line(k int, xs []float64) []run {
 		}
 	}
 	return joined(runs)
+}
+
+// places are those of the eigenvalue of one rank. It has a tangent where it stays
+// real, or one of a pair, on both sides: that of the parabola through three points.
+func (e *eigenvalues) places(k int, along []place) []place {
+	places := make([]place, len(along))
+	points := e.branch.Points()
+	for i, p := range along {
+		p.y = real(e.spread[i][k])
+		if i > 0 && i+1 < len(along) && paired(e.spread[i-1], k) == paired(e.spread[i+1], k) && paired(e.spread[i], k) == paired(e.spread[i-1], k) {
+			p.dy = parabola(real(e.spread[i-1][k]), p.y, real(e.spread[i+1][k]), points[i].Arclength-points[i-1].Arclength, points[i+1].Arclength-points[i].Arclength)
+		}
+		places[i] = p
+	}
+	return places
 }
 
 func at(x, y float64) place { return place{x, y, math.NaN(), math.NaN()} }
@@ -199,7 +216,7 @@ func (s *scene) zeroLine(low, high float64) {
 	if s.x.shown.set {
 		low, high = s.x.shown.low, s.x.shown.high
 	}
-	s.hair = append(s.hair, hairline{places: []place{at(low, 0), at(high, 0)}, ink: faint, counts: true})
+	s.hair = append(s.hair, hairline{places: []place{at(low, 0), at(high, 0)}, ink: faint, counts: true, across: true})
 }
 
 // complexPlane is the scene of the eigenvalues of one steady state.
@@ -229,7 +246,7 @@ func (f *Figure) complexPlane() (*scene, error) {
 		top = (right - left) / 4
 	}
 	for _, line := range [][]place{{at(left, 0), at(right, 0)}, {at(0, -top), at(0, top)}} {
-		s.hair = append(s.hair, hairline{places: line, ink: faint, counts: true})
+		s.hair = append(s.hair, hairline{places: line, ink: faint, counts: true, across: true})
 	}
 	return s, nil
 }

@@ -141,6 +141,7 @@ func (s *scene) extent() (width, height float64) {
 		for _, v := range values {
 			low, high = min(low, v), max(high, v)
 		}
+		low, high = a.widen(low, high)
 		return high - low
 	}
 	xs, ys := s.values()

@@ -36,6 +36,17 @@ func (s *sheet) markLabels(spots []spot) (left int) {
 	if backward.better(forward) {
 		best = backward
 	}
+	if best.left > 0 { // those that came last may go where they come first
+		for _, before := range []func(a, b spot) bool{
+			func(a, b spot) bool { return a.centre.X > b.centre.X },
+			func(a, b spot) bool { return a.centre.Y < b.centre.Y },
+			func(a, b spot) bool { return len(a.label) > len(b.label) },
+		} {
+			if other := s.arrange(spots, before); other.better(best) {
+				best = other
+			}
+		}
+	}
 	for _, l := range best.labels {
 		s.room.Take(l.place)
 		if l.place.Leader != nil {
@@ -259,6 +270,13 @@ func (s *sheet) rivals(p plane.Place, own curve, all []curve) float64 {
 	cost, reach := 0.0, 60.0
 	if p.Leader != nil {
 		reach = 24
+	}
+	for _, h := range s.hair {
+		for _, line := range s.lines(run{places: h.places}) {
+			for i := 1; i < len(line) && !h.across; i++ {
+				cost = max(cost, reach-3*float64(plane.ToSegment(line[i-1], line[i], p.Box)))
+			}
+		}
 	}
 	for _, c := range all {
 		if c.ink == own.ink && c.label == own.label {

@@ -55,6 +55,9 @@ func (s *scene) specialMark(special continuation.Special) (mark, error) {
 		m.shape, m.tangents = crossingShape, [2]place{unknownTangent, unknownTangent}
 	case *continuation.Hopf:
 		m.shape = ringShape
+		if s.plane() {
+			m.dx, m.dy = s.edge(special)
+		}
 	}
 	return m, err
 }

@@ -26,13 +26,20 @@ const (
 
 // addCorners puts the special points of loci into the scene.
 func (f *Figure) addCorners(s *scene) error {
+	seen := map[string]bool{} // a Bogdanov-Takens point lies on two loci
+	put := func(m mark) {
+		if !seen[m.label] {
+			s.put(m)
+		}
+		seen[m.label] = true
+	}
 	for _, l := range f.loci() {
 		places, err := s.locusPlaces(l)
 		if err != nil {
 			return err
 		}
 		for _, c := range l.Specials() {
-			s.put(s.cornerMark(c, l, places))
+			put(s.cornerMark(c, l, places))
 		}
 	}
 	for _, it := range f.items {
@@ -43,7 +50,7 @@ func (f *Figure) addCorners(s *scene) error {
 		if err != nil {
 			return err
 		}
-		s.put(mark{place: at, shape: cornerShapes[it.corner.Kind], label: s.cornerLabel(it.corner)})
+		put(mark{place: at, shape: cornerShapes[it.corner.Kind], label: s.cornerLabel(it.corner)})
 	}
 	return nil
 }
@@ -76,7 +83,7 @@ func hardAhead(points []*continuation.LocusPoint, i int) bool {
 // cornerLabel says the word and the values of both parameters, that of the x axis
 // first; a parameter that stands on no axis is named.
 func (s *scene) cornerLabel(c *continuation.LocusSpecial) string {
-	first, second := c.Where.Pair()
+	first, second := pairOf(c.Where)
 	pair := []continuation.Parameter{first, second}
 	if pair[1].Name == s.x.variable.Name || pair[0].Name == s.y.variable.Name {
 		pair[0], pair[1] = pair[1], pair[0]
@@ -94,10 +101,31 @@ func (s *scene) cornerLabel(c *continuation.LocusSpecial) string {
 	return text
 }
 
+// pairOf returns the two parameters at a point of a locus; what rounding leaves of a
+// 0 is 0, by the typical size of the parameter or its value in the model.
+func pairOf(p *continuation.LocusPoint) (first, second continuation.Parameter) {
+	first, second = p.Pair()
+	for _, q := range []*continuation.Parameter{&first, &second} {
+		size := q.Scale
+		for _, own := range p.Model().Parameters() {
+			if own.Name == q.Name {
+				size = max(size, math.Abs(own.Value))
+			}
+		}
+		if size == 0 {
+			size = 1e-4
+		}
+		if math.Abs(q.Value) < 1e-10*size {
+			q.Value = 0
+		}
+	}
+	return first, second
+}
+
 // wedge thickens the two edges that meet in a cusp, which are the curve itself: they
 // leave with one tangent.
 func (s *sheet) wedge(sp *spot) {
-	const reach = 22
+	const reach = 15
 	style := draw.LineStyle{Color: accent, Width: 2.4}
 	var away vg.Point
 	for _, edge := range sp.edges {
@@ -143,7 +171,7 @@ func (s *sheet) first(places []place, reach vg.Length) []vg.Point {
 func (s *sheet) corner(sp *spot, u vg.Point) {
 	const radius, half = 3.2, 8
 	n := normal(u)
-	if n.Y < 0 {
+	if n.Y < -1e-3 || (n.Y < 1e-3 && n.X < 0) {
 		n = vg.Point{X: -n.X, Y: -n.Y}
 	}
 	fold := draw.LineStyle{Color: accent, Width: barWidth}
@@ -151,7 +179,7 @@ func (s *sheet) corner(sp *spot, u vg.Point) {
 	switch sp.shape {
 	case restShape:
 		s.bar(fold, sp.centre, u, half)
-		s.circle(along(sp.centre, n, radius+barWidth/2+0.6), radius, false)
+		s.circle(along(sp.centre, n, radius+barWidth/2-0.4), radius, false)
 	case throughShape:
 		s.circle(sp.centre, radius+1.2, false)
 		s.bar(fold, sp.centre, u, half)

@@ -42,6 +42,7 @@ type hairline struct {
 	ink    color.Color
 	counts bool // for the ranges of the axes
 	fan    bool // the oscillation at a Hopf point
+	across bool // runs on, level or upright, to the edges of the picture
 }
 
 type lineKind int

@@ -104,14 +104,17 @@ func (s *scene) addPath(b *continuation.Branch, counts bool) error {
 	return nil
 }
 
-// edge returns the direction in which the limit moves in the plane: by the fold's
-// sensitivity to the parameter on the other axis.
-func (s *scene) edge(fold *continuation.Fold) (dx, dy float64) {
-	list, err := fold.Sensitivities()
+// edge returns the direction in which a limit moves in the plane: by its sensitivity
+// to the parameter on the other axis.
+func (s *scene) edge(limit interface {
+	Sensitivities() (*continuation.Sensitivities, error)
+	Parameter() continuation.Parameter
+}) (dx, dy float64) {
+	list, err := limit.Sensitivities()
 	if err != nil {
 		return math.NaN(), math.NaN()
 	}
-	name := fold.Parameter().Name
+	name := limit.Parameter().Name
 	for _, one := range list.List {
 		switch {
 		case s.x.variable.Name == name && s.y.variable.Name == one.Name:

@@ -58,7 +58,7 @@ func (f *Figure) findings() string {
 		list = append(list, f.finding(sp))
 	}
 	for _, c := range f.corners() {
-		list = append(list, cornerText(c))
+		list = append(list, cornerText(c, cornerDigits))
 	}
 	if len(list) == 0 {
 		if len(f.lines()) == 0 {

@@ -27,7 +27,7 @@ func (f *Figure) corners() []*continuation.LocusSpecial {
 
 func withCorner(list []*continuation.LocusSpecial, c *continuation.LocusSpecial) []*continuation.LocusSpecial {
 	for _, have := range list {
-		if cornerText(have) == cornerText(c) {
+		if have.Kind == c.Kind && cornerText(have, 6) == cornerText(c, 6) {
 			return list
 		}
 	}
@@ -39,9 +39,9 @@ func withCorner(list []*continuation.LocusSpecial, c *continuation.LocusSpecial)
 const cornerDigits = 8
 
 // cornerText says one special point of a locus: where it lies.
-func cornerText(c *continuation.LocusSpecial) string {
-	first, second := c.Where.Pair()
-	return fmt.Sprintf("%s at %s, %s", c.Kind, labelled(first.Variable, first.Value, cornerDigits), labelled(second.Variable, second.Value, cornerDigits))
+func cornerText(c *continuation.LocusSpecial, digits int) string {
+	first, second := pairOf(c.Where)
+	return fmt.Sprintf("%s at %s, %s", c.Kind, labelled(first.Variable, first.Value, digits), labelled(second.Variable, second.Value, digits))
 }
 
 // locusMeaning explains the lines of loci, and what else a plane of parameters

@@ -1,8 +1,12 @@
 package display
 
 import (
+	"math"
+
 	"gonum.org/v1/plot/vg"
 	"gonum.org/v1/plot/vg/draw"
+
+	"brinkline/display/internal/plane"
 )
 
 // spans draws margins as on an engineering drawing: thin lines down (or up) from
@@ -12,6 +16,11 @@ func (s *sheet) spans(list []span) {
 	for _, sp := range list {
 		a, b := s.at(sp.from), s.at(sp.to)
 		if !s.Contains(a) || !s.Contains(b) {
+			continue
+		}
+		if math.Abs(float64(a.Y-b.Y)) < 1 { // in a plane of parameters
+			s.arrow(a, b)
+			s.spanLabel(sp.label, a, b, a.Y)
 			continue
 		}
 		y := s.level(a, b)
@@ -83,5 +92,13 @@ func (s *sheet) spanLabel(label string, a, b vg.Point, y vg.Length) {
 			s.room.Block(box)
 			return
 		}
+	}
+	at := vg.Point{X: middle, Y: y}
+	if p, ok := s.room.Near(plane.Request{Anchor: at, Size: size, Reach: 2, Prefer: vg.Point{Y: 1}}); ok {
+		s.room.Take(p)
+		if p.Leader != nil {
+			s.StrokeLines(draw.LineStyle{Color: faint, Width: 0.5}, p.Leader)
+		}
+		s.write(text, p.Box, labelSize, ink)
 	}
 }

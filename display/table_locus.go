@@ -132,12 +132,12 @@ func locusRemarks(l *continuation.Locus) []string {
 // pairColumns puts the values of the two parameters, under their names where all
 // points agree on them.
 func pairColumns(list []*continuation.LocusPoint, digits int, put putColumn) {
-	first, second := list[0].Pair()
+	first, second := pairOf(list[0])
 	same := true
 	one, two := make([]float64, len(list)), make([]float64, len(list))
 	where := make([]string, len(list))
 	for i, p := range list {
-		a, b := p.Pair()
+		a, b := pairOf(p)
 		same = same && a.Variable == first.Variable && b.Variable == second.Variable
 		one[i], two[i] = a.Value, b.Value
 		where[i] = labelled(a.Variable, a.Value, digits) + ", " + labelled(b.Variable, b.Value, digits)

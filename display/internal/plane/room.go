@@ -277,3 +277,15 @@ func ToBox(p vg.Point, box vg.Rectangle) vg.Length {
 	dy := max(box.Min.Y-p.Y, 0, p.Y-box.Max.Y)
 	return length(vg.Point{X: dx, Y: dy})
 }
+
+// ToSegment returns the distance of a rectangle from the line between two points.
+func ToSegment(a, b vg.Point, box vg.Rectangle) vg.Length {
+	if touches(a, b, box) {
+		return 0
+	}
+	d := min(ToBox(a, box), ToBox(b, box))
+	for _, corner := range []vg.Point{box.Min, box.Max, {X: box.Min.X, Y: box.Max.Y}, {X: box.Max.X, Y: box.Min.Y}} {
+		d = min(d, Distance(corner, a, b))
+	}
+	return d
+}
