@@ -20,6 +20,8 @@ type Model struct {
 	context    func() context.Context
 	observer   Observer
 
+	sequential bool // from the option Sequential
+
 	named sliceStates // from the option States
 }
 
