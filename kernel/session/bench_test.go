@@ -2,6 +2,7 @@ package session
 
 import (
 	"fmt"
+	"reflect"
 	"strings"
 	"testing"
 )
@@ -82,6 +83,24 @@ func BenchmarkStart(b *testing.B) {
 			b.Fatal(err)
 		}
 		s.Close()
+	}
+}
+
+// BenchmarkModelCall calls a model function of two states from compiled code, as the toolkit does without a tape.
+func BenchmarkModelCall(b *testing.B) {
+	s := sessionAfter(b, tankCells, "f := tank")
+	var fn reflect.Value
+	for name, p := range s.bound {
+		if strings.HasPrefix(name, "f"+mark) {
+			fn = p.Elem()
+		}
+	}
+	if fn.Kind() != reflect.Func {
+		b.Fatalf("no function: %v", fn)
+	}
+	state, params := reflect.Zero(fn.Type().In(0)), reflect.Zero(fn.Type().In(1))
+	for b.Loop() {
+		fn.Call([]reflect.Value{state, params})
 	}
 }
 

@@ -38,13 +38,7 @@ func (u *unit) mentionsCellNames() bool {
 	if len(u.fresh) == 0 || !u.sp.hasBody {
 		return false
 	}
-	toks, _ := scan(u.sp.statements)
-	bound := map[string]bool{}
-	for _, t := range toks { // more than are bound, which only costs time
-		if t.tok == token.IDENT {
-			bound[t.lit] = true
-		}
-	}
+	bound := u.statementNames()
 	for n := range bound {
 		if u.next.defs[n] != nil && u.cur.vars[n] == nil {
 			delete(bound, n)
@@ -61,6 +55,18 @@ func (u *unit) mentionsCellNames() bool {
 	return false
 }
 
+// statementNames lists the names in the statements of the cell: more than they bind, which only costs time.
+func (u *unit) statementNames() map[string]bool {
+	toks, _ := scan(u.sp.statements)
+	out := map[string]bool{}
+	for _, t := range toks {
+		if t.tok == token.IDENT {
+			out[t.lit] = true
+		}
+	}
+	return out
+}
+
 // isLibraryName reports whether a name is a package or predeclared, and not bound by any cell.
 func (u *unit) isLibraryName(name string) bool {
 	if u.cur.vars[name] != nil {
@@ -73,7 +79,7 @@ func (u *unit) isLibraryName(name string) bool {
 func (u *unit) phase(vars, bodies bool) *Error {
 	for {
 		if err := u.assemble(vars, bodies); err != nil {
-			return u.s.errorAt(place{u.sp.src, err.offset}, "SyntaxError", err.message)
+			return u.s.syntaxError(u.sp.src, err)
 		}
 		u.settle(bodies)
 		fault, owner := u.firstFault()

@@ -1,8 +1,10 @@
 package session
 
 import (
+	"fmt"
 	"go/ast"
 	"go/types"
+	"slices"
 )
 
 // takeBack undoes what lowering recorded for a cell that will not run.
@@ -33,6 +35,21 @@ func (u *unit) commit(low *lowered) {
 		}
 	}
 	u.s.tab.Store(u.next)
+}
+
+// noteBroken tells the analyst which definitions of the cell, or of earlier ones that it changed, cannot be used as things are.
+func (u *unit) noteBroken(r *run) {
+	var list []*def
+	for d := range u.fresh {
+		old := u.cur.defs[d.key()]
+		if d.broken != nil && (d.src == u.sp.src || old == nil || old.broken == nil) {
+			list = append(list, d)
+		}
+	}
+	slices.SortFunc(list, func(a, b *def) int { return a.index - b.index })
+	for _, d := range list {
+		r.out.Stream("stderr", fmt.Sprintf("note: %s cannot be used yet: %s (%s, line %d)\n", d.key(), d.broken.Message, d.src.label(), d.broken.Line))
+	}
 }
 
 // recordUses notes which top-level names a definition refers to and which versions these are now.

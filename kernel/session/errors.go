@@ -104,9 +104,10 @@ func (u *unit) brokenUse(d *def, at place) *Error {
 }
 
 var (
-	mustRE   = regexp.MustCompile(mustName + `\d\(`)
-	hiddenRE = regexp.MustCompile(`([\pL_][\pL\d_]*?)` + mark + `(\d+)`)
-	pkgRE    = regexp.MustCompile(hiddenPackage + `([\pL\d_]+)`)
+	mustRE     = regexp.MustCompile(mustName + `\d\(`)
+	hiddenRE   = regexp.MustCompile(`([\pL_][\pL\d_]*?)` + mark + `(\d+)`)
+	declaredRE = regexp.MustCompile(` \(declared at [^)]*\)`)
+	pkgRE      = regexp.MustCompile(hiddenPackage + `([\pL\d_]+)`)
 )
 
 // cleanMessage removes what a cell does not contain from a message of the checker.
@@ -128,6 +129,7 @@ func (u *unit) cleanMessage(msg string) string {
 		p := pathOfHidden(m)
 		return p[strings.LastIndexByte(p, '/')+1:]
 	})
+	msg = declaredRE.ReplaceAllString(msg, "")
 	if i := strings.Index(msg, "\n"); i >= 0 {
 		msg = strings.ReplaceAll(msg, "\n\t", "; ")
 		msg = strings.ReplaceAll(msg, "\n", "; ")

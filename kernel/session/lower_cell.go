@@ -30,6 +30,9 @@ func (l *lowerer) cellBody() []ast.Stmt {
 func (l *lowerer) show(s *ast.ExprStmt) []ast.Stmt {
 	x := ast.Unparen(s.X)
 	if inner, n, ok := mustCall(x); ok {
+		if l.u.isFprint(inner) {
+			return l.exprStmt(s)
+		}
 		stmts, names := l.mustCallStmts(inner)
 		rts := l.resultTypes(inner)
 		args := []ast.Expr{ast.NewIdent(names[n])}

@@ -75,7 +75,7 @@ func (l *lowerer) ifStmt(s *ast.IfStmt) []ast.Stmt {
 func (l *lowerer) emptyBlock() *ast.BlockStmt { return &ast.BlockStmt{} }
 
 func (l *lowerer) elsePosition(e *ast.IfStmt) []ast.Stmt {
-	if canFail(e) {
+	if l.canFail(e) {
 		return l.at(e.Pos())
 	}
 	return nil
@@ -106,7 +106,7 @@ func (l *lowerer) forStmt(s *ast.ForStmt, name string) []ast.Stmt {
 	} else if len(post) > 1 {
 		out.Post = exprStmt(closure(nil, post...))
 	}
-	if s.Cond != nil && canFail(exprStmt(s.Cond)) {
+	if s.Cond != nil && l.canFail(exprStmt(s.Cond)) {
 		body.List = append(body.List, l.at(s.Cond.Pos())...)
 	}
 	out.Body = body
@@ -431,7 +431,7 @@ func (l *lowerer) switchStmt(s *ast.SwitchStmt, name string) []ast.Stmt {
 		clause := &ast.CaseClause{Body: l.stmts(cc.Body)}
 		for _, e := range cc.List {
 			if tag == nil {
-				clause.List = append(clause.List, l.expr(e))
+				clause.List = append(clause.List, l.condition(e))
 			} else {
 				clause.List = append(clause.List, l.caseCond(tag, tagType, e))
 			}
@@ -440,6 +440,14 @@ func (l *lowerer) switchStmt(s *ast.SwitchStmt, name string) []ast.Stmt {
 		out.Body.List = append(out.Body.List, clause)
 	}
 	return scoped(append(head, label(name, out)))
+}
+
+// condition lowers a case of a switch without a tag, which may be true in an interface.
+func (l *lowerer) condition(e ast.Expr) ast.Expr {
+	if types.IsInterface(l.typeOf(e)) {
+		return hostCall("Equal", hostCall("Any", ast.NewIdent("true")), l.opened(e))
+	}
+	return l.expr(e)
 }
 
 // joined makes one condition of several.

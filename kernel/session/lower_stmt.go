@@ -39,7 +39,7 @@ func (l *lowerer) stmt(s ast.Stmt) []ast.Stmt {
 		return l.rangeStmt(s, "")
 	}
 	var out []ast.Stmt
-	if canFail(s) {
+	if l.canFail(s) {
 		out = l.at(s.Pos())
 	}
 	return append(out, l.plainStmt(s)...)
@@ -77,30 +77,64 @@ func (l *lowerer) plainStmt(s ast.Stmt) []ast.Stmt {
 	return nil
 }
 
-// canFail reports whether a statement may panic or call, in itself, not in blocks within it.
-func canFail(s ast.Stmt) bool {
+// canFail reports whether a statement may panic or call a function of a cell, in itself, not in blocks within it. Positions are
+// recorded only before such statements, for each costs as much as an addition.
+func (l *lowerer) canFail(s ast.Stmt) bool {
 	found := false
 	ast.Inspect(s, func(n ast.Node) bool {
 		switch n := n.(type) {
 		case *ast.BlockStmt, *ast.FuncLit:
 			return false
-		case *ast.CallExpr, *ast.IndexExpr, *ast.SliceExpr, *ast.StarExpr, *ast.TypeAssertExpr, *ast.SendStmt, *ast.GoStmt, *ast.SelectStmt:
+		case *ast.CallExpr:
+			found = found || !l.harmless(n)
+		case *ast.IndexExpr, *ast.SliceExpr, *ast.StarExpr, *ast.TypeAssertExpr, *ast.SendStmt, *ast.GoStmt, *ast.SelectStmt:
 			found = true
 		case *ast.SelectorExpr:
-			found = true
-		case *ast.BinaryExpr:
-			found = found || n.Op == token.QUO || n.Op == token.REM || n.Op == token.SHL || n.Op == token.SHR
-		case *ast.AssignStmt:
-			switch n.Tok {
-			case token.QUO_ASSIGN, token.REM_ASSIGN, token.SHL_ASSIGN, token.SHR_ASSIGN:
-				found = true
+			if sel := l.u.info.Selections[n]; sel != nil {
+				_, pointer := l.typeOf(n.X).Underlying().(*types.Pointer)
+				found = found || pointer || sel.Indirect() || types.IsInterface(l.typeOf(n.X))
 			}
+		case *ast.BinaryExpr:
+			found = found || fails(n.Op, l.typeOf(n))
+		case *ast.AssignStmt:
+			found = found || n.Tok != token.ASSIGN && n.Tok != token.DEFINE && fails(opOf[n.Tok], l.typeOf(n.Lhs[0]))
 		case *ast.UnaryExpr:
 			found = found || n.Op == token.ARROW
 		}
 		return !found
 	})
 	return found
+}
+
+// fails reports whether an operator may panic: shifts and integer divisions.
+func fails(op token.Token, t types.Type) bool {
+	switch op {
+	case token.SHL, token.SHR:
+		return true
+	case token.QUO, token.REM:
+		b, ok := t.Underlying().(*types.Basic)
+		return !ok || b.Info()&types.IsInteger != 0
+	}
+	return false
+}
+
+// harmless reports whether a call neither panics nor leads back into a cell.
+func (l *lowerer) harmless(c *ast.CallExpr) bool {
+	fun := ast.Unparen(c.Fun)
+	tv := l.u.info.Types[fun]
+	if tv.IsType() {
+		return true
+	}
+	if tv.IsBuiltin() {
+		id, ok := fun.(*ast.Ident)
+		return ok && id.Name != "panic" && id.Name != "make" && id.Name != "close" && id.Name != "append"
+	}
+	sel, ok := fun.(*ast.SelectorExpr)
+	if !ok {
+		return false
+	}
+	fn, ok := l.u.info.Uses[sel.Sel].(*types.Func)
+	return ok && fn.Pkg() != nil && (fn.Pkg().Path() == "math" || fn.Pkg().Path() == "math/cmplx")
 }
 
 // mustStatement lowers "call, hand the values on, then check", so that what is assigned is assigned before the cell stops.

@@ -267,6 +267,10 @@ func (l *lowerer) ownType(t *types.Named) string {
 	if l.types[name] {
 		return name
 	}
+	if refersToItself(t) {
+		l.fail(l.definedAt(t), "the type %s refers to itself other than through a struct; cells cannot run that: put it in a struct",
+			t.Obj().Name())
+	}
 	l.types[name] = true
 	if !types.IsInterface(t) && (t.TypeArgs().Len() > 0 || d == nil) {
 		l.pendingTypes = append(l.pendingTypes, l.sub(t).(*types.Named))
@@ -275,6 +279,50 @@ func (l *lowerer) ownType(t *types.Named) string {
 	l.decls = append(l.decls, &ast.GenDecl{Tok: token.TYPE, Specs: []ast.Spec{spec}})
 	spec.Type = l.typ(t.Underlying())
 	return name
+}
+
+// definedAt is the position of a type's definition.
+func (l *lowerer) definedAt(t *types.Named) token.Pos { return t.Origin().Obj().Pos() }
+
+// refersToItself reports whether a type is part of itself without a struct or interface in between. The interpreter cannot build such
+// types and, of some, would never stop trying.
+func refersToItself(t *types.Named) bool {
+	seen := map[string]bool{}
+	var visit func(types.Type) bool
+	visit = func(u types.Type) bool {
+		switch u := types.Unalias(u).(type) {
+		case *types.Named:
+			if u.Origin() == t.Origin() {
+				return true
+			}
+			key := types.TypeString(u, nil)
+			if seen[key] {
+				return false
+			}
+			seen[key] = true
+			return visit(u.Underlying())
+		case *types.Pointer:
+			return visit(u.Elem())
+		case *types.Slice:
+			return visit(u.Elem())
+		case *types.Array:
+			return visit(u.Elem())
+		case *types.Map:
+			return visit(u.Key()) || visit(u.Elem())
+		case *types.Chan:
+			return visit(u.Elem())
+		case *types.Signature:
+			return visit(u.Params()) || visit(u.Results())
+		case *types.Tuple:
+			for v := range u.Variables() {
+				if visit(v.Type()) {
+					return true
+				}
+			}
+		}
+		return false
+	}
+	return visit(t.Underlying())
 }
 
 // localType names a type declared within a function.

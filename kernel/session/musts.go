@@ -167,17 +167,31 @@ func (u *unit) untakenArgument(p *ast.CallExpr, n int) bool {
 
 // isPrint reports whether a call prints to the cell's output; its error tells nothing.
 func (u *unit) isPrint(call *ast.CallExpr) bool {
-	sel, ok := call.Fun.(*ast.SelectorExpr)
-	if !ok {
-		return false
-	}
-	f, ok := u.info.Uses[sel.Sel].(*types.Func)
-	if !ok || f.Pkg() == nil || f.Pkg().Path() != "fmt" {
-		return false
-	}
-	switch f.Name() {
+	switch u.fmtFunc(call) {
 	case "Print", "Println", "Printf":
 		return true
 	}
 	return false
+}
+
+// isFprint reports whether a call prints to a writer; how many bytes it wrote is nothing to show.
+func (u *unit) isFprint(call *ast.CallExpr) bool {
+	switch u.fmtFunc(call) {
+	case "Fprint", "Fprintln", "Fprintf":
+		return true
+	}
+	return false
+}
+
+// fmtFunc names the function of package fmt that is called, if one is.
+func (u *unit) fmtFunc(call *ast.CallExpr) string {
+	sel, ok := call.Fun.(*ast.SelectorExpr)
+	if !ok {
+		return ""
+	}
+	f, ok := u.info.Uses[sel.Sel].(*types.Func)
+	if !ok || f.Pkg() == nil || f.Pkg().Path() != "fmt" {
+		return ""
+	}
+	return f.Name()
 }

@@ -111,14 +111,16 @@ func (s *Session) panicError(v any, frames []string) *Error {
 	case interruption:
 		return s.interruptedError()
 	case string:
-		return s.errorAt(s.placeOf(*s.pos), "Panic", oneLine(goError(errors.New(v)).Error())).withCaller(s, frames)
+		at := s.placeOf(*s.pos)
+		return s.errorAt(at, "Panic", oneLine(goError(errors.New(v)).Error())).withCaller(s, frames).inCell(s, at)
 	case error:
 		var st *stop
 		if errors.As(v, &st) {
 			return s.stopError(st)
 		}
 	}
-	return s.errorAt(s.placeOf(*s.pos), "Panic", oneLine(panicText(v))).withCaller(s, frames)
+	at := s.placeOf(*s.pos)
+	return s.errorAt(at, "Panic", oneLine(panicText(v))).withCaller(s, frames).inCell(s, at)
 }
 
 func oneLine(text string) string { return strings.ReplaceAll(strings.TrimSpace(text), "\n", "; ") }
@@ -130,7 +132,19 @@ func (s *Session) stopError(st *stop) *Error {
 	}
 	e := s.errorAt(at, "Error", oneLine(panicText(st.err)))
 	e.Err = st.err
-	return e.withCaller(s, nil)
+	return e.withCaller(s, nil).inCell(s, at)
+}
+
+// inCell makes the error point into the running cell. What happened in a function of another cell says so in the message.
+func (e *Error) inCell(s *Session, at place) *Error {
+	here := s.placeOf(*s.line)
+	if at.src == nil || here.src == nil || at.src == here.src {
+		return e
+	}
+	line, _ := at.src.position(at.offset)
+	e.Message += fmt.Sprintf(" (%s, line %d)", at.src.label(), line)
+	e.Line, e.Column = here.src.position(here.offset)
+	return e
 }
 
 // withCaller adds the functions that the error went through and the statement of the cell that led there.

@@ -201,6 +201,7 @@ func (s *Session) Run(ctx context.Context, c Cell, out Output) Result {
 	u.commit(low)
 	r := s.begin(ctx, src, out)
 	defer s.end(r)
+	u.noteBroken(r)
 	res := s.execute(r, prog, u, low)
 	s.tidy()
 	return res

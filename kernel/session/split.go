@@ -165,7 +165,9 @@ func segments(text string) ([]segment, *parseError) {
 		case token.LPAREN, token.LBRACK, token.LBRACE:
 			depth++
 		case token.RPAREN, token.RBRACK, token.RBRACE:
-			depth--
+			if depth--; depth < 0 {
+				return nil, &parseError{t.off, "unexpected " + t.tok.String() + " without its opening counterpart"}
+			}
 		case token.SEMICOLON:
 			if depth <= 0 {
 				flush(i, t.off, t.lit == ";")

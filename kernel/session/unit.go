@@ -76,8 +76,40 @@ func (u *unit) define() *Error {
 		}
 		u.enter(d)
 	}
+	u.retryBroken()
 	u.spread()
 	return nil
+}
+
+// retryBroken gives broken definitions another try that mention a name which the cell may bind.
+func (u *unit) retryBroken() {
+	bound := u.statementNames()
+	var again []*def
+	for _, d := range u.next.defs {
+		if d.broken == nil || u.fresh[d] {
+			continue
+		}
+		for n := range d.uses {
+			if bound[n] {
+				again = append(again, d)
+				break
+			}
+		}
+	}
+	for _, d := range again {
+		u.renew(d)
+	}
+}
+
+// renew enters a new version of a live definition.
+func (u *unit) renew(d *def) {
+	c := *d
+	c.instances, c.env, c.broken = map[string]string{}, nil, nil
+	if m := u.moved[d]; m != nil {
+		c.src, c.start, c.end = m.src, m.start, m.end
+		delete(u.moved, d)
+	}
+	u.enter(&c)
 }
 
 func (u *unit) addImport(im importLine) *Error {
@@ -121,13 +153,7 @@ func (u *unit) spread() {
 			if u.fresh[d] || !u.touched(d) {
 				continue
 			}
-			c := *d
-			c.instances, c.env, c.broken = map[string]string{}, nil, nil
-			if m := u.moved[d]; m != nil {
-				c.src, c.start, c.end = m.src, m.start, m.end
-				delete(u.moved, d)
-			}
-			u.enter(&c)
+			u.renew(d)
 			again = true
 			break
 		}
@@ -135,6 +161,9 @@ func (u *unit) spread() {
 }
 
 func (u *unit) touched(d *def) bool {
+	if d.broken != nil && len(u.changed) > 0 {
+		return true // any new name or method may be what it waits for
+	}
 	for n := range d.uses {
 		if u.changed[n] {
 			return true
