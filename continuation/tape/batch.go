@@ -122,7 +122,7 @@ func step1(in *instr, d, a *lane, n int) {
 		}
 	case opExp:
 		for i := range n {
-			d[i] = math.Exp(a[i])
+			d[i] = exp(a[i])
 		}
 	default:
 		for i := range n {
@@ -155,7 +155,7 @@ func step2(in *instr, d, a, b *lane, n int) {
 		}
 	case opExpMul:
 		for i := range n {
-			d[i] = math.Exp(a[i]) * b[i]
+			d[i] = exp(a[i]) * b[i]
 		}
 	case opLess:
 		for i := range d {

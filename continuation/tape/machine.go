@@ -139,9 +139,9 @@ func execute(code []instr, base unsafe.Pointer) {
 		case opNegMul:
 			*d = -float64(*at(base, in.a) * *at(base, in.b))
 		case opExpMul:
-			*d = math.Exp(*at(base, in.a)) * *at(base, in.b)
+			*d = exp(*at(base, in.a)) * *at(base, in.b)
 		case opExp:
-			*d = math.Exp(*at(base, in.a))
+			*d = exp(*at(base, in.a))
 		case opSqrt:
 			*d = math.Sqrt(*at(base, in.a))
 		case opSelect:

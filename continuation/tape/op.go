@@ -223,6 +223,42 @@ func apply(op Op, a, b, c float64, k int) float64 {
 
 // function does an operation of one operand.
 func function(op Op, a float64, k int) float64 {
+	if library {
+		return libraryFunction(op, a, k)
+	}
+	switch op {
+	case opExp:
+		return exp(a)
+	case opLog:
+		return log(a)
+	case opSin:
+		return sin(a)
+	case opCos:
+		return cos(a)
+	case opTanh:
+		return tanh(a)
+	}
+	return commonFunction(op, a, k)
+}
+
+// libraryFunction is function by package math.
+func libraryFunction(op Op, a float64, k int) float64 {
+	switch op {
+	case opExp:
+		return math.Exp(a)
+	case opLog:
+		return math.Log(a)
+	case opSin:
+		return math.Sin(a)
+	case opCos:
+		return math.Cos(a)
+	case opTanh:
+		return math.Tanh(a)
+	}
+	return commonFunction(op, a, k)
+}
+
+func commonFunction(op Op, a float64, k int) float64 {
 	switch op {
 	case opSqrt:
 		return math.Sqrt(a)
@@ -238,24 +274,16 @@ func function(op Op, a float64, k int) float64 {
 		return math.Round(a)
 	case opRoundToEven:
 		return math.RoundToEven(a)
-	case opExp:
-		return math.Exp(a)
 	case opExp2:
 		return math.Exp2(a)
 	case opExpm1:
 		return math.Expm1(a)
-	case opLog:
-		return math.Log(a)
 	case opLog2:
 		return math.Log2(a)
 	case opLog10:
 		return math.Log10(a)
 	case opLog1p:
 		return math.Log1p(a)
-	case opSin:
-		return math.Sin(a)
-	case opCos:
-		return math.Cos(a)
 	case opTan:
 		return math.Tan(a)
 	case opAsin:
@@ -268,8 +296,6 @@ func function(op Op, a float64, k int) float64 {
 		return math.Sinh(a)
 	case opCosh:
 		return math.Cosh(a)
-	case opTanh:
-		return math.Tanh(a)
 	}
 	return rareFunction(op, a, k)
 }
@@ -331,7 +357,10 @@ func function2(op Op, a, b, c float64) float64 {
 	case opDim:
 		return math.Dim(a, b)
 	case opPow:
-		return math.Pow(a, b)
+		if library {
+			return math.Pow(a, b)
+		}
+		return pow(a, b)
 	case opHypot:
 		return math.Hypot(a, b)
 	case opAtan2:

@@ -14,6 +14,7 @@ import (
 func TestSamplesGiveTheBitsOfTheCompiler(t *testing.T) {
 	for name, f := range samples.Models {
 		t.Run(name, func(t *testing.T) {
+			tape.UseLibrary(t)
 			src, err := tape.Parse(name, samples.Source)
 			if err != nil {
 				t.Fatal(err)
@@ -31,11 +32,11 @@ func TestSamplesGiveTheBitsOfTheCompiler(t *testing.T) {
 				if err != nil {
 					t.Fatal(err)
 				}
-				m := program.Value().NewMachine()
-				if !m.Run(x, p) {
+				got, ok := program.Plainly(x, p)
+				if !ok {
 					t.Fatal("the guards do not hold")
 				}
-				for i, got := range m.Out() {
+				for i, got := range got {
 					if math.Float64bits(got) != math.Float64bits(want[i]) && !(math.IsNaN(got) && math.IsNaN(want[i])) {
 						t.Fatalf("at %v, %v: f[%d] is %v, want %v", x, p, i, got, want[i])
 					}
@@ -43,6 +44,37 @@ func TestSamplesGiveTheBitsOfTheCompiler(t *testing.T) {
 			}
 			t.Logf("%d recordings", family.Recorded())
 		})
+	}
+}
+
+// A machine gives the bits of the operations done one by one.
+func TestMachinesGiveTheBitsOfTheirOperations(t *testing.T) {
+	rng := rand.New(rand.NewPCG(3, 4))
+	q := samples.Params{A: 1.25, B: -0.5, Table: [4]float64{1, -2, 0.5, 3}, N: 3}
+	p := []float64{1.25, -0.5, 1, -2, 0.5, 3}
+	for name := range samples.Models {
+		src, err := tape.Parse(name, samples.Source)
+		if err != nil {
+			t.Fatal(err)
+		}
+		family := tape.NewFamily(src, tape.Settings{States: 3, Params: reflect.ValueOf(q)})
+		for range 100 {
+			x := sampleState(rng)
+			program, err := family.At(x, p)
+			if err != nil {
+				t.Fatal(err)
+			}
+			m := program.Value().NewMachine()
+			want, ok := program.Plainly(x, p)
+			if !m.Run(x, p) || !ok {
+				t.Fatal("the guards do not hold")
+			}
+			for i, v := range m.Out() {
+				if math.Float64bits(v) != math.Float64bits(want[i]) && !(math.IsNaN(v) && math.IsNaN(want[i])) {
+					t.Fatalf("%s at %v: f[%d] is %v, want %v", name, x, i, v, want[i])
+				}
+			}
+		}
 	}
 }
 
