@@ -3,6 +3,7 @@ package display
 import (
 	"fmt"
 	"math"
+	"math/cmplx"
 
 	"brinkline/continuation"
 )
@@ -30,7 +31,7 @@ func cornerCard(c *continuation.LocusSpecial) *Grid {
 	frequency(g, "pair", c.Omega)
 	frequency(g, "other pair", c.Omega2)
 	if len(c.Where.Eigenvalues) > 0 {
-		g.say("eigenvalues of f_x", eigenvalueText(settled(c.Where.Eigenvalues)))
+		g.say("eigenvalues of f_x", eigenvalueText(settled(c.Where.Eigenvalues, zeros[c.Kind])))
 	}
 	g.note(caution)
 	return g
@@ -42,9 +43,13 @@ func frequency(g *Grid, name string, omega float64) {
 	}
 }
 
-// settled puts 0 for what rounding leaves of critical eigenvalues: a double zero
-// comes out of the solver as the square root of rounding.
-func settled(values []complex128) []complex128 {
+// zeros is how many eigenvalues are 0 at a special point of a locus.
+var zeros = map[string]int{cuspKind: 1, takensKind: 2, foldHopfKind: 1}
+
+// settled puts 0 for what rounding leaves of critical eigenvalues: for the smallest
+// ones, as many as are 0 there (a double zero comes out of the solver as the square
+// root of rounding), and for real parts beside the largest eigenvalue.
+func settled(values []complex128, zero int) []complex128 {
 	size := 0.0
 	for _, v := range values {
 		size = max(size, math.Abs(real(v)), math.Abs(imag(v)))
@@ -59,7 +64,27 @@ func settled(values []complex128) []complex128 {
 	for i, v := range values {
 		out[i] = complex(clean(real(v)), clean(imag(v)))
 	}
+	for range min(zero, len(out)) {
+		least := -1
+		for i, v := range out {
+			if v != 0 && (least < 0 || cmplx.Abs(v) < cmplx.Abs(out[least])) {
+				least = i
+			}
+		}
+		if least >= 0 && countZeros(out) < zero {
+			out[least] = 0
+		}
+	}
 	return out
+}
+
+func countZeros(values []complex128) (n int) {
+	for _, v := range values {
+		if v == 0 {
+			n++
+		}
+	}
+	return n
 }
 
 // locusPointCard shows a fold or Hopf point on a locus.

@@ -2,6 +2,7 @@ package display
 
 import (
 	"fmt"
+	"slices"
 	"strings"
 
 	"brinkline/continuation"
@@ -59,8 +60,9 @@ func (f *Figure) locusNames() []string {
 			names[i] += " from " + withUnit(typeset(significant(p.First, 5)), l.First().Unit)
 		}
 	}
+	given := slices.Clone(names)
 	for i := range names {
-		if repeated(names, names[i]) > 1 {
+		if repeated(given, given[i]) > 1 {
 			names[i] = fmt.Sprintf("%s %d", kinds[i], i+1)
 		}
 	}

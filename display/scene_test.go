@@ -11,6 +11,7 @@ import (
 	"os"
 	"path/filepath"
 	"regexp"
+	"slices"
 	"strconv"
 	"strings"
 	"testing"
@@ -90,6 +91,42 @@ func TestSceneGolden(t *testing.T) {
 	golden(t, "switch.svg", string(pictureOf(t, switchScene(12)).svg()))
 }
 
+// planeScene is a plane of two parameters made by hand: the folds of x' = p + q x - x³
+// with their cusp at 0, a Hopf locus with what can lie on it, the path of a branch.
+func planeScene() *scene {
+	s := &scene{
+		x: side{label: "Push (N)", variable: continuation.Variable{Name: "Push", Unit: "N"}, parameter: true},
+		y: side{label: "Lever (m)", variable: continuation.Variable{Name: "Lever", Unit: "m"}, parameter: true},
+	}
+	var folds, hopfs run
+	for i := range 21 {
+		u := float64(i)/10 - 1
+		folds.places = append(folds.places, place{2 * u * u * u, 3 * u * u, 6 * u * u, 6 * u})
+		hopfs.places = append(hopfs.places, place{3*u - 1, 1.5 - u, 3, -1})
+	}
+	hopfs.line = dashDotted
+	saddles := run{places: hopfs.places[14:], line: dotted}
+	hopfs.places = hopfs.places[:15]
+	s.curves = []curve{{ink: ink, label: "folds", locus: true, runs: []run{folds}}, {ink: inks[1], label: "Hopf points", locus: true, runs: []run{hopfs, saddles}}}
+	s.hair = []hairline{{places: []place{at(-3, 1), at(2, 1)}, ink: faint}}
+	edges := [2][]place{slices.Clone(folds.places[:11]), folds.places[10:]}
+	slices.Reverse(edges[0])
+	s.marks = []mark{
+		{place: folds.places[10], shape: wedgeShape, edges: edges, label: "cusp 0 N, 0 m"},
+		{place: hopfs.places[14], shape: restShape, label: "Bogdanov-Takens point 0.2 N, 1.1 m"},
+		{place: hopfs.places[5], shape: halfShape, label: "degenerate Hopf point −2.5 N, 2 m"},
+		{place: hopfs.places[9], shape: twinShape, label: "Hopf-Hopf point −1.3 N, 1.6 m"},
+		{place: folds.places[18], shape: throughShape, label: "fold-Hopf point 1.024 N, 1.92 m"},
+		{place: at(-3, 1), label: "now −3 N, 1 m"},
+	}
+	s.spans = []span{{from: at(-3, 1), to: at(-0.385, 1), label: "margin 2.615 N"}}
+	return s
+}
+
+func TestPlaneGolden(t *testing.T) {
+	golden(t, "plane.svg", string(pictureOf(t, planeScene()).svg()))
+}
+
 func TestSameSceneSameBytes(t *testing.T) {
 	a, b := pictureOf(t, switchScene(40)), pictureOf(t, switchScene(40))
 	if !bytes.Equal(a.svg(), b.svg()) || !bytes.Equal(a.png(), b.png()) {
@@ -104,6 +141,7 @@ func TestSameSceneSameBytes(t *testing.T) {
 // refuse, or what would reach out of it.
 func TestForbiddenInSVG(t *testing.T) {
 	doc := string(pictureOf(t, switchScene(12)).svg())
+	doc += string(pictureOf(t, planeScene()).svg())
 	for _, bad := range []string{"<script", "foreignObject", "href", "url(", "@import", "<style", "NaN", "Inf", "e-0", "e+0"} {
 		if strings.Contains(doc, bad) {
 			t.Errorf("%s in the picture", bad)
@@ -112,6 +150,7 @@ func TestForbiddenInSVG(t *testing.T) {
 	if long := regexp.MustCompile(`[a-z]="[^"<>]*\d\.\d{3,}[^"<>]*"`).FindString(doc); long != "" {
 		t.Errorf("more than two decimals: %.60s", long)
 	}
+	doc = string(pictureOf(t, switchScene(12)).svg())
 	plateFirst := regexp.MustCompile(`</desc>\n<path d="M0 \S+ \S+ \S+ 0[^"]*Z" fill="#fff"/>`)
 	if !plateFirst.MatchString(doc) {
 		t.Errorf("the opaque plate does not come first: %.700s", doc)
@@ -183,7 +222,7 @@ func readSVG(t testing.TB, doc []byte) readBack {
 					turned: attr["transform"] != "", size: size,
 				})
 			}
-			if tok.Name.Local == "path" && attr["fill"] == "none" && attr["stroke-width"] == "1.5" {
+			if w := attr["stroke-width"]; tok.Name.Local == "path" && attr["fill"] == "none" && (w == "1.5" || w == "0.9" || w == "0.6") {
 				out.lines = append(out.lines, pathPoints(attr["d"])...)
 			}
 		case xml.CharData:
@@ -239,7 +278,7 @@ func TestLabelsCollideWithNothing(t *testing.T) {
 					rt.Fatalf("%q lies on %q", a.text, b.text)
 				}
 			}
-			if !strings.HasPrefix(a.text, "fold") && !strings.HasPrefix(a.text, "Hopf") {
+			if !slices.ContainsFunc([]string{"fold", "Hopf", "cusp", "Bogdanov", "degenerate"}, func(word string) bool { return strings.HasPrefix(a.text, word) }) {
 				continue
 			}
 			for _, line := range got.lines {
@@ -253,7 +292,9 @@ func TestLabelsCollideWithNothing(t *testing.T) {
 
 func randomScene(t *rapid.T) *scene {
 	s := &scene{x: side{label: "Push (N)"}, y: side{label: "Angle"}}
-	words := map[shape]string{foldShape: "fold", crossingShape: "simple stationary bifurcation", ringShape: "Hopf point", tickShape: "too hot", dotShape: "now"}
+	words := map[shape]string{foldShape: "fold", crossingShape: "simple stationary bifurcation", ringShape: "Hopf point", tickShape: "too hot", dotShape: "now",
+		wedgeShape: "cusp", restShape: "Bogdanov-Takens point", throughShape: "fold-Hopf point", twinShape: "Hopf-Hopf point",
+		halfShape: "degenerate Hopf point", crossShape: "-0.5 ± 2 i"}
 	nan := math.NaN()
 	for i := range rapid.IntRange(1, 5).Draw(t, "curves") {
 		c := curve{ink: inks[i]}
@@ -266,14 +307,24 @@ func randomScene(t *rapid.T) *scene {
 			u := float64(j) / 59
 			r.places = append(r.places, place{u + 0.3*a*math.Sin(k*u), b + math.Cos(k*u)*a, nan, nan})
 		}
+		r.line = lineKind(rapid.IntRange(int(solid), int(dashDotted)).Draw(t, "line"))
+		r.fine, c.locus = rapid.Bool().Draw(t, "fine"), rapid.Bool().Draw(t, "locus")
 		c.runs = []run{r}
 		s.curves = append(s.curves, c)
+		if rapid.Bool().Draw(t, "hair") {
+			s.hair = append(s.hair, hairline{places: r.places[10:20], ink: faint, line: dashed})
+		}
 		for range rapid.IntRange(0, 3).Draw(t, "marks") {
-			p := r.places[rapid.IntRange(0, 59).Draw(t, "at")]
-			kind := shape(rapid.IntRange(int(dotShape), int(tickShape)).Draw(t, "shape"))
+			k := rapid.IntRange(0, 59).Draw(t, "at")
+			p := r.places[k]
+			kind := shape(rapid.IntRange(int(dotShape), int(crossShape)).Draw(t, "shape"))
 			m := mark{place: p, shape: kind, tangents: [2]place{unknownTangent, unknownTangent}, label: words[kind] + " " + significant(p.x, 5) + " N"}
 			if kind == foldShape {
 				m.away = rapid.SampledFrom([]float64{-1, 1}).Draw(t, "away")
+			}
+			if kind == wedgeShape {
+				m.edges[0], m.edges[1] = slices.Clone(r.places[:k+1]), r.places[k:]
+				slices.Reverse(m.edges[0])
 			}
 			s.marks = append(s.marks, m)
 		}
