@@ -312,7 +312,11 @@ func randomScene(t *rapid.T) *scene {
 		c.runs = []run{r}
 		s.curves = append(s.curves, c)
 		if rapid.Bool().Draw(t, "hair") {
-			s.hair = append(s.hair, hairline{places: r.places[10:20], ink: faint, line: dashed})
+			h := hairline{ink: faint, line: dashed}
+			for _, p := range r.places[20:50] {
+				h.places = append(h.places, at(p.x+0.1, p.y+0.15))
+			}
+			s.hair = append(s.hair, h)
 		}
 		for range rapid.IntRange(0, 3).Draw(t, "marks") {
 			k := rapid.IntRange(0, 59).Draw(t, "at")
