@@ -245,37 +245,60 @@ func (r *recorder) usable(at ast.Expr, v value) value {
 func (r *recorder) method(e *ast.SelectorExpr, sel *types.Selection) value {
 	f := sel.Obj().(*types.Func)
 	path := sel.Index()
-	recv := r.expr(e.X)
+	recv, t := r.expr(e.X), r.typeOf(e.X)
 	var at *cell
 	if len(path) > 1 {
 		at = r.fieldPath(e, recv, path[:len(path)-1])
-		recv = at.v
+		recv, t = at.v, fieldType(t, path[:len(path)-1])
 	}
-	if recv.kind == kFace {
+	for recv.kind == kFace {
+		// The method of what the interface holds, which may come from an
+		// embedded field that is an interface again.
 		content := recv.ref.(*face)
-		obj, _, _ := types.LookupFieldOrMethod(content.typ, true, f.Pkg(), f.Name())
+		obj, index, _ := types.LookupFieldOrMethod(content.typ, true, f.Pkg(), f.Name())
 		concrete, ok := obj.(*types.Func)
 		if !ok {
 			r.refuse(e, "the method %s cannot be recorded", f.Name())
 		}
-		f, recv, at = concrete, content.v, nil
-	} else if types.IsInterface(sel.Recv()) {
+		f, recv, t, at = concrete, content.v, content.typ, r.newCell(content.v)
+		if len(index) > 1 {
+			at = r.fieldPath(e, recv, index[:len(index)-1])
+			recv, t = at.v, fieldType(t, index[:len(index)-1])
+		}
+	}
+	if types.IsInterface(f.Signature().Recv().Type()) {
 		r.refuse(e, "the method %s of an interface without value is called", f.Name())
 	}
-	if _, pointer := f.Signature().Recv().Type().Underlying().(*types.Pointer); pointer {
-		if recv.kind != kPointer {
+	if isPointer(f.Signature().Recv().Type()) {
+		if !isPointer(t) {
 			if at == nil {
 				at = r.address(e.X)
 			}
 			recv = value{kind: kPointer, ref: at}
 		}
 	} else {
-		if recv.kind == kPointer || recv.kind == kNil {
+		if isPointer(t) {
 			recv = r.deref(e, recv).v
 		}
 		recv = r.copyOf(recv)
 	}
 	return r.declared(e, f, &recv)
+}
+
+func isPointer(t types.Type) bool {
+	_, ok := t.Underlying().(*types.Pointer)
+	return ok
+}
+
+// fieldType follows a path of fields from a type, through pointers.
+func fieldType(t types.Type, path []int) types.Type {
+	for _, i := range path {
+		if p, ok := t.Underlying().(*types.Pointer); ok {
+			t = p.Elem()
+		}
+		t = t.Underlying().(*types.Struct).Field(i).Type()
+	}
+	return t
 }
 
 func (r *recorder) index(e *ast.IndexExpr) value {

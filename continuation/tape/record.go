@@ -101,7 +101,9 @@ func (r *recorder) run() (p *Program, again bool, err error) {
 		case stopped:
 			err = e.error
 		default:
-			panic(e)
+			// A gap in the recorder is no reason to end the program: the model
+			// runs without a tape, and says so.
+			err = &Refusal{Pos: r.g.at, Place: r.src.place(r.g.at), Reason: fmt.Sprintf("the recorder failed here (%v)", e)}
 		}
 	}()
 	r.model()

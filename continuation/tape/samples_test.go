@@ -15,7 +15,7 @@ func TestSamplesGiveTheBitsOfTheCompiler(t *testing.T) {
 	for name, f := range samples.Models {
 		t.Run(name, func(t *testing.T) {
 			tape.UseLibrary(t)
-			src, err := tape.Parse(name, samples.Source)
+			src, err := tape.Parse(name, samples.Source, samples.MoreSource)
 			if err != nil {
 				t.Fatal(err)
 			}
@@ -53,7 +53,7 @@ func TestMachinesGiveTheBitsOfTheirOperations(t *testing.T) {
 	q := samples.Params{A: 1.25, B: -0.5, Table: [4]float64{1, -2, 0.5, 3}, N: 3}
 	p := []float64{1.25, -0.5, 1, -2, 0.5, 3}
 	for name := range samples.Models {
-		src, err := tape.Parse(name, samples.Source)
+		src, err := tape.Parse(name, samples.Source, samples.MoreSource)
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -106,7 +106,7 @@ func TestBatchesGiveTheBitsOfMachines(t *testing.T) {
 		p = append(p, own...)
 	}
 	for name := range samples.Models {
-		src, err := tape.Parse(name, samples.Source)
+		src, err := tape.Parse(name, samples.Source, samples.MoreSource)
 		if err != nil {
 			t.Fatal(err)
 		}

@@ -127,7 +127,7 @@ func TestTaylorAgainstTapes(t *testing.T) {
 	in := &tape.Inputs{X: x, P: p}
 	in.Dirs[0] = []float64{0.5, -1, 0.25, 0}
 	for name := range samples.Models {
-		src, err := tape.Parse(name, samples.Source)
+		src, err := tape.Parse(name, samples.Source, samples.MoreSource)
 		if err != nil {
 			t.Fatal(err)
 		}
