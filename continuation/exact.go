@@ -2,6 +2,7 @@ package continuation
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"go/types"
 	"math"
@@ -162,7 +163,7 @@ func (e *exact) at(x, p []float64, eq equations) (q *tape.Program, refused bool)
 	}
 	q, err := e.open().At(x, p)
 	if err != nil {
-		if _, refusal := err.(*tape.Refusal); refusal && e.family.Recorded() == 0 {
+		if _, refusal := err.(*tape.Refusal); refusal && e.family.Recorded() == 0 || errors.Is(err, tape.ErrGuards) {
 			e.refusal = err
 		}
 		return nil, e.refusal != nil

@@ -173,3 +173,154 @@ func TestExactReadsVariableAnew(t *testing.T) {
 		t.Errorf("note: %s", note)
 	}
 }
+
+type nestedState struct {
+	Pair  [2]struct{ X, Y float64 }
+	Inner struct {
+		_ float64
+		T float64 `unit:"K"`
+	}
+}
+
+type nestedParams struct {
+	Rate  [2]float64
+	Steps int
+	Loads []float64
+	Law   struct {
+		Kind string
+		K    float64
+	}
+}
+
+func nestedModel(s nestedState, q nestedParams) (r nestedState) {
+	for i := range s.Pair {
+		r.Pair[i].X = q.Rate[i] - s.Pair[i].X*s.Pair[i].X
+		r.Pair[i].Y = s.Pair[1-i].X - s.Pair[i].Y
+	}
+	for range q.Steps {
+		r.Inner.T += q.Loads[1]
+	}
+	if q.Law.Kind == "linear" {
+		r.Inner.T -= q.Law.K * s.Inner.T
+	}
+	return
+}
+
+const nestedSource = `
+type nestedState struct {
+	Pair  [2]struct{ X, Y float64 }
+	Inner struct {
+		_ float64
+		T float64
+	}
+}
+
+type nestedParams struct {
+	Rate  [2]float64
+	Steps int
+	Loads []float64
+	Law   struct {
+		Kind string
+		K    float64
+	}
+}
+
+func nestedModel(s nestedState, q nestedParams) (r nestedState) {
+	for i := range s.Pair {
+		r.Pair[i].X = q.Rate[i] - s.Pair[i].X*s.Pair[i].X
+		r.Pair[i].Y = s.Pair[1-i].X - s.Pair[i].Y
+	}
+	for range q.Steps {
+		r.Inner.T += q.Loads[1]
+	}
+	if q.Law.Kind == "linear" {
+		r.Inner.T -= q.Law.K * s.Inner.T
+	}
+	return
+}
+`
+
+// States and parameters are numbered alike by the source and by the function.
+func TestExactNestedStates(t *testing.T) {
+	q := nestedParams{Rate: [2]float64{4, 9}, Steps: 3, Loads: []float64{7, 5}}
+	q.Law.Kind, q.Law.K = "linear", 2
+	m, err := continuation.NewModel(nestedModel, q, continuation.WithSource("nestedModel", nestedSource))
+	if err != nil {
+		t.Fatal(err)
+	}
+	p, err := m.Settle([]float64{1, 1, 1, 1, 1})
+	if err != nil {
+		t.Fatal(err)
+	}
+	for name, want := range map[string]float64{"Pair[0].X": 2, "Pair[1].X": 3, "Pair[0].Y": 3, "Pair[1].Y": 2, "Inner.T": 7.5} {
+		if v, err := p.At(name); err != nil || math.Abs(v-want) > 1e-12 {
+			t.Errorf("%s is %v, %v; want %v", name, v, err, want)
+		}
+	}
+	if note := m.DerivativesNote(); note != "exact, from the source: 11 operations" {
+		t.Errorf("derivatives: %s", note)
+	}
+}
+
+const flipSource = `
+type Params struct {
+	A     float64
+	Table [256]int
+}
+
+func model(u []float64, q Params, f []float64) {
+	k := 0
+	for i, v := range u {
+		if v > 0 {
+			k += 1 << i
+		}
+	}
+	for i, v := range u {
+		f[i] = v - q.A*float64(q.Table[k]>>i&1)
+	}
+}
+`
+
+type flipParams struct {
+	A     float64
+	Table [256]int
+}
+
+func flipModel(u []float64, q flipParams, f []float64) {
+	k := 0
+	for i, v := range u {
+		if v > 0 {
+			k += 1 << i
+		}
+	}
+	for i, v := range u {
+		f[i] = v - q.A*float64(q.Table[k]>>i&1)
+	}
+}
+
+// A model whose conditions go another way each time ends up with differences,
+// and says so.
+func TestExactGivesUpOnGuards(t *testing.T) {
+	q := flipParams{A: 1}
+	for k := range q.Table {
+		q.Table[k] = (k + 1) % 256
+	}
+	names := []string{"a", "b", "c", "d", "e", "f", "g", "h"}
+	m, err := continuation.NewModel(flipModel, q, continuation.States(names, nil, nil), continuation.WithSource("model", flipSource))
+	if err != nil {
+		t.Fatal(err)
+	}
+	if note := m.DerivativesNote(); !strings.Contains(note, "follows one side of the conditions at line ") {
+		t.Errorf("derivatives at first: %s", note)
+	}
+	for k := range 100 {
+		x := make([]float64, 8)
+		for i := range x {
+			x[i] = float64(k>>i&1)*2 - 1
+		}
+		_, _ = m.Settle(x) // has no solution; that it ends is what matters
+	}
+	if note := m.DerivativesNote(); !strings.HasSuffix(note, "not exact, because the conditions of the model go too many different ways") {
+		t.Errorf("derivatives at last: %s", note)
+	}
+}
