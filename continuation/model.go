@@ -19,6 +19,7 @@ type Model struct {
 	der        Derivatives
 	context    func() context.Context
 	observer   Observer
+	notice     func() string
 
 	sequential bool // from the option Sequential
 
