@@ -116,7 +116,12 @@ func closers(text string) string {
 	return strings.Join(stack, "")
 }
 
-func (s *Session) lookAt(text string) *view {
+func (s *Session) lookAt(text string) (v *view) {
+	defer func() {
+		if recover() != nil {
+			v = nil // an unfinished cell may be anything
+		}
+	}()
 	sp, err := splitCell(newSource("", 0, text))
 	if err != nil {
 		return nil
@@ -126,7 +131,7 @@ func (s *Session) lookAt(text string) *view {
 		return nil
 	}
 	u.settle(true)
-	v := &view{u: u}
+	v = &view{u: u}
 	v.find(u.file)
 	if v.at == nil {
 		return nil

@@ -14,6 +14,8 @@ import (
 	"sync/atomic"
 	"weak"
 
+	"github.com/traefik/yaegi/interp"
+
 	"brinkline/display"
 	"brinkline/kernel/session/internal/export"
 )
@@ -180,31 +182,46 @@ func (s *Session) Run(ctx context.Context, c Cell, out Output) Result {
 		return Result{Err: &Error{Name: "SessionError", Message: "the session is closed"}}
 	}
 	src := newSource(c.ID, c.Number, c.Source)
-	sp, perr := splitCell(src)
-	if perr != nil {
-		return Result{Err: s.syntaxError(src, perr)}
-	}
-	u := newUnit(s, sp)
-	if err := u.check(); err != nil {
-		return Result{Err: err}
-	}
-	low, err := u.lower()
+	u, low, prog, err := s.prepare(src)
 	if err != nil {
-		u.takeBack()
 		return Result{Err: err}
 	}
-	prog, cerr := s.machine.compile(low.file)
-	if cerr != nil {
-		u.takeBack()
-		return Result{Err: s.errorAt(place{src, sp.lastStart}, "LoweringError", "this cell cannot be run: "+cleanInternal(cerr.Error()))}
-	}
-	u.commit(low)
 	r := s.begin(ctx, src, out)
 	defer s.end(r)
 	u.noteBroken(r)
 	res := s.execute(r, prog, u, low)
 	s.tidy()
 	return res
+}
+
+// prepare takes a cell to the point where it can run, and makes what it defines live. A fault of the session itself is an error of
+// the cell; it changes nothing.
+func (s *Session) prepare(src *source) (u *unit, low *lowered, prog *interp.Program, err *Error) {
+	sp, perr := splitCell(src)
+	if perr != nil {
+		return nil, nil, nil, s.syntaxError(src, perr)
+	}
+	u = newUnit(s, sp)
+	defer func() {
+		if r := recover(); r != nil {
+			err = s.errorAt(place{src, sp.lastStart}, "LoweringError", "this cell cannot be run: "+cleanInternal(fmt.Sprint(r)))
+		}
+		if err != nil {
+			u.takeBack()
+		}
+	}()
+	if err = u.check(); err != nil {
+		return u, nil, nil, err
+	}
+	if low, err = u.lower(); err != nil {
+		return u, nil, nil, err
+	}
+	prog, cerr := s.machine.compile(low.file)
+	if cerr != nil {
+		return u, nil, nil, s.errorAt(place{src, sp.lastStart}, "LoweringError", "this cell cannot be run: "+cleanInternal(cerr.Error()))
+	}
+	u.commit(low)
+	return u, low, prog, nil
 }
 
 func cleanInternal(text string) string {

@@ -147,7 +147,12 @@ func clip(s string) string {
 // plainOutput keeps both streams as a program would print them.
 type plainOutput struct{ recorder }
 
-func (o *plainOutput) Stream(name, text string) { o.recorder.Stream("stdout", text) }
+// Stream leaves out the session's own notes on what is not defined yet.
+func (o *plainOutput) Stream(name, text string) {
+	if !strings.HasPrefix(text, "note: ") {
+		o.recorder.Stream("stdout", text)
+	}
+}
 
 func runProgram(file string) string {
 	ctx, cancel := context.WithTimeout(context.Background(), 40*time.Second)
