@@ -54,6 +54,8 @@ func (f *Figure) add(v any) error {
 		return f.put(v != nil, "event", item{special: v})
 	case *continuation.Margin:
 		return f.put(v != nil, "margin", item{margin: v})
+	case *continuation.Margins:
+		return f.addMargins(v)
 	case *continuation.Locus:
 		return f.put(v != nil, "locus", item{locus: v})
 	case *continuation.LocusSpecial:
@@ -72,6 +74,20 @@ func (f *Figure) put(ok bool, what string, it item) error {
 		return fmt.Errorf("there is no %s to draw (nil)", what)
 	}
 	f.items = append(f.items, it)
+	return nil
+}
+
+// addMargins takes the branch that was followed and the margins on it.
+func (f *Figure) addMargins(m *continuation.Margins) error {
+	if m == nil {
+		return f.put(false, "margin", item{})
+	}
+	f.items = append(f.items, item{branch: m.Branch})
+	for _, one := range []*continuation.Margin{m.Above, m.Below} {
+		if one != nil {
+			f.items = append(f.items, item{margin: one})
+		}
+	}
 	return nil
 }
 

@@ -83,6 +83,10 @@ func card(v any) *Grid {
 		return hopfCard(v)
 	case *continuation.Margin:
 		return marginCard(v)
+	case *continuation.Margins:
+		return marginsCard(v)
+	case *continuation.DirectionMargin:
+		return directionCard(v)
 	case *continuation.Sensitivities:
 		return sensitivitiesTable(v)
 	case *continuation.Multiple:

@@ -72,6 +72,12 @@ func Points(v any) *Grid {
 func surveyTable(s surveyed) *Grid {
 	g := pointsTable(s.Points(), nil)
 	g.caption = "Steady states found"
+	if found, ok := s.(*continuation.Survey); ok {
+		g.caption = fmt.Sprintf("Steady states of %s found for %s", found.Model().Name(), boxText(found))
+		if n := len(found.Outside()); n > 0 {
+			g.note(fmt.Sprintf("%s outside of the box, which were not looked for: Outside gives them.", count(n, "more was met", "more were met")))
+		}
+	}
 	if len(s.Points()) == 0 {
 		g.columns = []column{{}}
 		g.add("none")
@@ -83,6 +89,22 @@ func surveyTable(s surveyed) *Grid {
 		}
 	}
 	return g
+}
+
+// boxText says where a survey looked; of many states, where the first ones lay.
+func boxText(s *continuation.Survey) string {
+	const most = 4
+	box, vars := s.Box(), s.Model().States()
+	var parts []string
+	for i, v := range vars {
+		if i == most && len(vars) > most+1 {
+			parts = append(parts, fmt.Sprintf("and %d more states", len(vars)-most))
+			break
+		}
+		b := box[v.Name]
+		parts = append(parts, withUnit(fmt.Sprintf("%s from %s to %s", v.Name, significant(b[0], 6), significant(b[1], 6)), v.Unit))
+	}
+	return strings.Join(parts, ", ")
 }
 
 // specialsIn returns the special points of a slice of any of their types.
