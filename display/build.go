@@ -52,13 +52,16 @@ func (f *Figure) heading(s *scene) string {
 	return s.y.what() + " against " + s.x.what() + " (" + strings.Join(f.modelNames(), ", ") + ")"
 }
 
-// notes are the lines under a branch that is shown as it is: why it ends, and
-// what the run could not explain.
+// notes are the lines under a figure: what the models have to say, and of a branch
+// that is shown as it is why it ends and what the run could not explain.
 func (f *Figure) notes() []string {
-	if !f.captioned {
-		return nil
-	}
 	var notes []string
+	if f.noticed = f.notice(); f.noticed != "" {
+		notes = strings.Split(f.noticed, "\n")
+	}
+	if !f.captioned {
+		return notes
+	}
 	for _, b := range f.branches() {
 		notes = append(notes, sentenceCase(endsOf(b)))
 		for _, n := range b.Notes() {

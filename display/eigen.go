@@ -5,6 +5,7 @@ import (
 	"math"
 	"math/cmplx"
 	"slices"
+	"strings"
 
 	"gonum.org/v1/plot/vg"
 
@@ -87,12 +88,13 @@ func (f *Figure) buildEigenvalues() (*picture, error) {
 	if err != nil {
 		return nil, err
 	}
-	p, err := f.lay(s, nil)
+	notes := f.notes()
+	p, err := f.lay(s, f.wrapNotes(notes))
 	if err != nil {
 		return nil, err
 	}
 	p.title, p.description = f.heading(s), f.eigenSentence(s)
-	p.text = p.description
+	p.text = strings.TrimSpace(p.description + "\n" + strings.Join(notes, "\n"))
 	return p, nil
 }
 

@@ -27,7 +27,8 @@ type Figure struct {
 	rangeY        interval
 	captioned     bool // write under the plot where the branches end
 	eigen         *eigenvalues
-	nowDrawn      bool // the values that the model was made with are in the picture
+	noticed       string // what the models had to say when it was drawn
+	nowDrawn      bool   // the values that the model was made with are in the picture
 
 	err   error
 	built *picture
@@ -160,7 +161,7 @@ func (f *Figure) Err() error {
 	if f == nil {
 		return errors.New("there is no figure (nil)")
 	}
-	if f.err == nil && f.built == nil {
+	if f.err == nil && (f.built == nil || f.noticed != f.notice()) {
 		f.draw()
 	}
 	return f.err

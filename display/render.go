@@ -61,7 +61,7 @@ func renderOwn(v any) (Bundle, bool) {
 		return branchBundle(v.Branch()), true
 	}
 	if g := card(v); g != nil {
-		return g.bundle(), true
+		return g.noticed(modelOf(v)).bundle(), true
 	}
 	return Bundle{}, false
 }

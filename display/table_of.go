@@ -21,6 +21,10 @@ func Table(v any) *Grid {
 	if isNil(v) {
 		return &Grid{err: fmt.Errorf("there is nothing to make a table of (%s)", nothing(v))}
 	}
+	return tableOf(v).noticed(modelOf(v))
+}
+
+func tableOf(v any) *Grid {
 	switch v := v.(type) {
 	case *Grid:
 		return v
@@ -51,6 +55,10 @@ func Points(v any) *Grid {
 	if isNil(v) {
 		return &Grid{err: fmt.Errorf("there are no points to make a table of (%s)", nothing(v))}
 	}
+	return pointsOf(v).noticed(modelOf(v))
+}
+
+func pointsOf(v any) *Grid {
 	switch v := v.(type) {
 	case *continuation.Branch:
 		return pointsTable(v.Points(), v)
