@@ -314,6 +314,21 @@ func (f valley) nose() float64 {
 	return extremum(func(at float64) float64 { return lagrange(x, y, at) }, x[0]-0.03, x[0], 1)
 }
 
+// reaches returns the load at which a limit is met, by bisection between today and
+// a load just short of the nose.
+func (f valley) reaches(limit func(v [13]complex128) float64) float64 {
+	low, high := f.load, 10.0
+	for range 40 {
+		f.load = (low + high) / 2
+		if v, _ := f.sweep(); limit(v) > 0 {
+			low = f.load
+		} else {
+			high = f.load
+		}
+	}
+	return low
+}
+
 func lagrange(x, y []float64, at float64) float64 {
 	sum := 0.0
 	for i := range x {
@@ -361,6 +376,19 @@ func TestFeederAgainstSweeps(t *testing.T) {
 		want := (up.nose() - down.nose()) / (2 * c.step)
 		// Four digits are printed; the difference leaves one in 1e4.
 		closeTo(t, c.pattern, numbers(t, outputText(t, notebook, "sensitivities"), c.pattern)[0], want, 2e-4*want)
+	}
+	for _, c := range []struct {
+		mark  string
+		limit func(v [13]complex128) float64 // 0 at the limit, positive before
+	}{
+		{"band left", func(v [13]complex128) float64 { return cmplx.Abs(v[12]) - 0.95 }},
+		{"line full", func(v [13]complex128) float64 {
+			amperes := cmplx.Abs(v[1]-v[2]) / math.Hypot(0.306*7.5, 0.355*7.5) * 20000 / math.Sqrt(3)
+			return 320 - amperes
+		}},
+	} {
+		got := numbers(t, outputText(t, notebook, "band"), c.mark+` +(\S+)`)[0]
+		closeTo(t, c.mark, got, valleyToday.reaches(c.limit), 0.005001)
 	}
 	more, less := valleyToday, valleyToday
 	more.sawmill, less.sawmill = 0.02, -0.02
