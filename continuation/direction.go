@@ -132,7 +132,7 @@ func (m *Model) slopesOfDistance(l *line, e *edge) ([]float64, error) {
 	for j := range all {
 		all[j] = j
 	}
-	s := newSystem(m, e.x, e.p, -1)
+	s := m.systemAt(e)
 	g := make([]float64, len(all))
 	if e.omega > 0 {
 		var err error

@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"math/cmplx"
+	"slices"
 
 	"brinkline/continuation/linalg"
 )
@@ -20,6 +21,7 @@ type edge struct {
 	omega    float64   // of a Hopf point
 	unstable int       // eigenvalues with positive real part besides the critical ones; -1 unknown
 	error    float64   // estimated, of t
+	sizes    []float64 // of the states, as far as they are known
 }
 
 // errNoEdge says that a line meets no limit, and why.
@@ -34,6 +36,25 @@ func isSafe(err error) bool { var no *errNoEdge; return errors.As(err, &no) && n
 // first limit: whatever special point comes first. The error is an *errNoEdge with an
 // empty reason where the whole line was passed without one.
 func (m *Model) traced(x []float64, l *line, far float64) (*edge, error) {
+	b, err := m.followed(x, l, far)
+	if err != nil {
+		return nil, err
+	}
+	switch end := b.ends[1]; end.Reason {
+	case Interrupted:
+		return nil, ErrInterrupted
+	case LeftRange:
+		return nil, &errNoEdge{}
+	case AtSpecial:
+		return m.edgeAt(b.specials[len(b.specials)-1], l)
+	default:
+		return nil, &errNoEdge{end.Text}
+	}
+}
+
+// followed follows the steady state along a line to the first special point, up to the
+// distance far.
+func (m *Model) followed(x []float64, l *line, far float64) (*Branch, error) {
 	pm := m.along(l)
 	p := make([]float64, len(pm.parameters))
 	l.at(0, p[:len(m.parameters)])
@@ -49,23 +70,16 @@ func (m *Model) traced(x []float64, l *line, far float64) (*edge, error) {
 	if err != nil {
 		return nil, err
 	}
-	b := (&run{plan: plan, task: "limit", up: up}).both()
-	switch end := b.ends[1]; end.Reason {
-	case Interrupted:
-		return nil, ErrInterrupted
-	case LeftRange:
-		return nil, &errNoEdge{}
-	case AtSpecial:
-		return m.edgeAt(b.specials[len(b.specials)-1], l)
-	default:
-		return nil, &errNoEdge{end.Text}
-	}
+	return (&run{plan: plan, task: "limit", up: up}).both(), nil
 }
 
 // edgeAt makes an edge of a special point on a line.
 func (m *Model) edgeAt(s Special, l *line) (*edge, error) {
 	at := s.Where()
 	e := &edge{kind: s.Kind(), x: at.State, t: at.Value(), p: make([]float64, len(m.parameters)), unstable: at.Unstable}
+	if at.sizes != nil {
+		e.sizes = at.sizes.states
+	}
 	l.at(e.t, e.p)
 	e.u = append([]float64(nil), l.u...)
 	var gradient []float64
@@ -75,7 +89,7 @@ func (m *Model) edgeAt(s Special, l *line) (*edge, error) {
 		gradient = negated(s.sensitivities[:len(m.parameters)])
 	case *Hopf:
 		e.omega, e.error = s.Omega, s.Uncertainty
-		sys := newSystem(m, e.x, e.p, -1)
+		sys := m.systemAt(e)
 		var err error
 		if gradient, _, err = sys.hopfSlopes(e.x, e.p, s.Omega, l.space.index); err != nil {
 			return nil, err
@@ -84,6 +98,22 @@ func (m *Model) edgeAt(s Special, l *line) (*edge, error) {
 		return e, nil
 	}
 	return e, e.orient(gradient, l)
+}
+
+// systemAt makes a system that knows the sizes of the states.
+func (m *Model) systemAt(e *edge) *system {
+	s := newSystem(m, e.x, e.p, -1)
+	s.learn(e.sizes)
+	return s
+}
+
+// learn takes over sizes of states for those without a tag.
+func (s *system) learn(sizes []float64) {
+	for i, v := range sizes {
+		if !s.tagged[i] && v > 0 {
+			s.sx[i] = v
+		}
+	}
 }
 
 // orient sets the normal from a gradient with respect to all parameters.
@@ -163,6 +193,7 @@ func newScout(m *Model, sp *space, near *edge) *scout {
 	pm := m.along(l)
 	p := append(append([]float64(nil), sp.base...), 0)
 	s := newSystem(pm, near.x, p, len(m.parameters))
+	s.learn(near.sizes)
 	n := s.n
 	c := &core{
 		s: s, n: n, first: len(m.parameters), p: p,
@@ -239,11 +270,6 @@ func (s *scout) newton(origin, e []float64, near *edge) (*edge, error) {
 func (s *scout) begin(y []float64, near *edge) ([]float64, error) {
 	c := s.c
 	clear(c.rows)
-	for i, v := range near.x {
-		if !c.s.tagged[i] && v != 0 {
-			c.s.sx[i] = math.Abs(v)
-		}
-	}
 	c.load(y, c.p)
 	if err := c.size(y); err != nil {
 		return nil, err
@@ -355,7 +381,7 @@ func (s *scout) step(y []float64) ([]float64, float64, error) {
 func (s *scout) edge(y []float64, near *edge, last float64) (*edge, error) {
 	c := s.c
 	n := c.n
-	e := &edge{kind: near.kind, x: append([]float64(nil), y[:n]...), t: y[n], p: make([]float64, len(s.m.parameters)), unstable: -1, error: last}
+	e := &edge{kind: near.kind, x: append([]float64(nil), y[:n]...), t: y[n], p: make([]float64, len(s.m.parameters)), unstable: -1, error: last, sizes: near.sizes}
 	s.line.at(e.t, e.p)
 	e.u = append([]float64(nil), s.line.u...)
 	if err := c.jacobian(y); err != nil {
@@ -377,26 +403,37 @@ func (s *scout) sameSheet(e, near *edge, y []float64) error {
 	if near.unstable < 0 {
 		return nil
 	}
-	critical := complex(0, 0)
+	critical := []complex128{0}
 	if near.omega > 0 {
 		if !(y[s.c.n+1] > 0) {
 			return &refusal{reason: "the pair is real there"}
 		}
-		critical = complex(0, math.Sqrt(y[s.c.n+1]))
+		omega := math.Sqrt(y[s.c.n+1])
+		critical = []complex128{complex(0, omega), complex(0, -omega)}
 	}
 	values := s.c.eigenvalues()
-	size := spectralSize(values)
-	e.unstable = 0
-	for _, v := range values {
-		isCritical := cmplx.Abs(v-critical) < 1e-6*size || cmplx.Abs(v-cmplx.Conj(critical)) < 1e-6*size
-		if real(v) > 0 && !isCritical {
-			e.unstable++
-		}
+	for _, c := range critical {
+		values = without(values, c)
 	}
+	e.unstable = countUnstable(values)
 	if e.unstable != near.unstable {
 		return &refusal{reason: "the limit there is one of another steady state"}
 	}
 	return nil
+}
+
+// without returns the values without the one that is nearest to c.
+func without(values []complex128, c complex128) []complex128 {
+	if len(values) == 0 {
+		return nil
+	}
+	nearest := 0
+	for i, v := range values {
+		if cmplx.Abs(v-c) < cmplx.Abs(values[nearest]-c) {
+			nearest = i
+		}
+	}
+	return slices.Delete(slices.Clone(values), nearest, nearest+1)
 }
 
 // gradient returns that of the limit with respect to the parameters that vary.
