@@ -115,7 +115,7 @@ func (u *unit) typecheck() {
 		Scopes:     map[ast.Node]*types.Scope{},
 	}
 	conf := types.Config{
-		Importer: hiddenImporter{u.s.importer},
+		Importer: u.s.importer,
 		Error: func(err error) {
 			var te types.Error
 			if errors.As(err, &te) && !tolerated(te) {
@@ -129,9 +129,6 @@ func (u *unit) typecheck() {
 	u.pkg.SetName("")
 	u.nameObjects()
 }
-
-// hiddenImporter answers for the checker; it only exists so that the session's importer stays free of the checker's interface.
-type hiddenImporter struct{ types.Importer }
 
 // tolerated reports whether a cell may have this fault: what is not used is no mistake in a notebook.
 func tolerated(e types.Error) bool {

@@ -74,11 +74,10 @@ func (d *def) parse(pl *places) (ast.Decl, *parseError) {
 type variable struct {
 	name  string
 	index int
-	key   string             // canonical form of the type
-	expr  ast.Expr           // the type, with internal names of cell types
-	named map[string]*def    // the cell types that the type mentions, by internal name
-	cell  *source            // where it was bound last
-	ptr   func() (any, bool) // reads the value
+	key   string          // canonical form of the type
+	expr  ast.Expr        // the type, with internal names of cell types
+	named map[string]*def // the cell types that the type mentions, by internal name
+	cell  *source         // where it was bound last
 }
 
 func (v *variable) internal() string { return v.name + mark + "v" + strconv.Itoa(v.index) }

@@ -14,11 +14,11 @@ func printable(x any) any {
 	switch x := x.(type) {
 	case box:
 		if x.t.method("Error") != nil {
-			return formattedError{formatted{x}, errorBox{x}}
+			return formattedError{formatted{x}, errorBox{b: x}}
 		}
 		return formatted{x}
 	case errorBox:
-		return formattedError{formatted{x.b}, x}
+		return formattedError{formatted(x), x}
 	case interface{ CellValue() any }:
 		return printable(x.CellValue())
 	case *stop:

@@ -114,22 +114,6 @@ func (l *lowerer) method(x ast.Expr, t types.Type, name string, pkg *types.Packa
 	return tg
 }
 
-// reachable cuts a path short at a field that a compiled package keeps to itself: the interpreter may not call methods by way of it,
-// and the compiled struct around it has them too.
-func (l *lowerer) reachable(t types.Type, index []int) []int {
-	for n, i := range index {
-		if p, ok := t.Underlying().(*types.Pointer); ok {
-			t = p.Elem()
-		}
-		f := t.Underlying().(*types.Struct).Field(i)
-		if !f.Exported() && f.Pkg() != l.u.pkg {
-			return index[:n]
-		}
-		t = f.Type()
-	}
-	return index
-}
-
 // receiver adjusts the receiver of an own method to what its first parameter wants.
 func (l *lowerer) receiver(tg target) ast.Expr {
 	want := tg.fn.Type().(*types.Signature).Recv().Type()
@@ -478,21 +462,9 @@ func (l *lowerer) conversion(x ast.Expr, t types.Type) ast.Expr {
 	arg := l.expr(x)
 	if tv := l.u.info.Types[x]; tv.Value != nil && !isUntyped(from) {
 		arg = l.constant(tv.Value, from, false)
-	} else if isUntyped(from) && tv.Value == nil { // an untyped bool
-		arg = l.expr(x)
-	}
-	fb, ok1 := from.Underlying().(*types.Basic)
-	tb, ok2 := t.Underlying().(*types.Basic)
-	if ok1 && ok2 {
-		if f := numericConversion(fb, tb); f != "" {
-			return call(l.conversionFun(t), hostCall(f, call(ast.NewIdent("float64"), arg)))
-		}
 	}
 	return call(l.conversionFun(t), arg)
 }
-
-// numericConversion names the host's conversion where the interpreter's own differs from Go's.
-func numericConversion(from, to *types.Basic) string { return "" }
 
 func (l *lowerer) sliceToArray(x ast.Expr, t types.Type) ast.Expr {
 	s, a := l.temp("s"), l.temp("z")

@@ -70,9 +70,6 @@ func (l *lowerer) toDynamic(x ast.Expr, from types.Type) ast.Expr {
 	case l.mentionsOwn(from):
 		return hostCall("Box", intLit(l.runtimeType(from).id), x)
 	}
-	if b, ok := from.(*types.Basic); ok && b.Info()&types.IsUntyped != 0 {
-		from = types.Default(from)
-	}
 	return hostCall("Any", x)
 }
 

@@ -43,14 +43,6 @@ func (l *lowerer) expr(e ast.Expr) ast.Expr {
 	return nil
 }
 
-// operand lowers an expression that may be a bare constant, beside another operand that fixes the type.
-func (l *lowerer) operand(e ast.Expr, bare bool) ast.Expr {
-	if tv := l.u.info.Types[e]; tv.Value != nil {
-		return l.constant(tv.Value, tv.Type, bare)
-	}
-	return l.expr(e)
-}
-
 func (l *lowerer) ident(e *ast.Ident) ast.Expr {
 	switch obj := l.u.info.ObjectOf(e).(type) {
 	case *types.Nil:

@@ -48,7 +48,7 @@ func (l *lowerer) branch(s *ast.BranchStmt) []ast.Stmt {
 func scoped(list []ast.Stmt) []ast.Stmt { return []ast.Stmt{&ast.BlockStmt{List: list}} }
 
 func (l *lowerer) ifStmt(s *ast.IfStmt) []ast.Stmt {
-	out := &ast.IfStmt{Body: l.emptyBlock()}
+	out := &ast.IfStmt{}
 	var init []ast.Stmt
 	if s.Init != nil {
 		init = l.stmt(s.Init)
@@ -71,8 +71,6 @@ func (l *lowerer) ifStmt(s *ast.IfStmt) []ast.Stmt {
 	}
 	return scoped(append(init, out))
 }
-
-func (l *lowerer) emptyBlock() *ast.BlockStmt { return &ast.BlockStmt{} }
 
 func (l *lowerer) elsePosition(e *ast.IfStmt) []ast.Stmt {
 	if l.canFail(e) {
@@ -210,7 +208,7 @@ func (l *lowerer) freshFor(s *ast.ForStmt, name string, vars []*types.Var) []ast
 	before = append(before, init...)
 	for _, v := range vars {
 		p := l.temp("p")
-		old := l.names2(v)
+		old := l.declare(v)
 		before = append(before, varStmt(p, &ast.StarExpr{X: l.typ(v.Type())}, &ast.UnaryExpr{Op: token.AND, X: ast.NewIdent(old)}))
 		fresh := l.redeclare(v)
 		top = append(top,
@@ -230,8 +228,6 @@ func (l *lowerer) freshFor(s *ast.ForStmt, name string, vars []*types.Var) []ast
 	top = append(top, l.block(s.Body))
 	return scoped(append(before, label(name, &ast.ForStmt{Body: &ast.BlockStmt{List: top}})))
 }
-
-func (l *lowerer) names2(v *types.Var) string { return l.declare(v) }
 
 // redeclare gives a variable a new name from here on.
 func (l *lowerer) redeclare(v *types.Var) string {

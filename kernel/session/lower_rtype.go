@@ -36,13 +36,8 @@ func (l *lowerer) displayQualifier(p *types.Package) string {
 
 func (l *lowerer) describeType(r *rtype, t types.Type) {
 	r.own = l.mentionsOwn(t)
-	if n, ok := t.(*types.Named); ok {
-		r.named = true
-		if strings.Contains(r.name, mark) {
-			r.name = hiddenRE.ReplaceAllString(r.name, "$1")
-		}
-		_ = n
-	}
+	_, r.named = t.(*types.Named)
+	r.name = hiddenRE.ReplaceAllString(r.name, "$1")
 	if !r.own && !(types.IsInterface(t) && l.dynamic(t)) {
 		r.reflect = l.reflectType(t)
 	}
@@ -277,13 +272,11 @@ func (l *lowerer) registerMethod(r *rtype, n *types.Named, fn *types.Func, sel *
 	if !byValue {
 		recv = types.NewPointer(n)
 	}
-	p := l.temp("r")
 	full := types.NewSignatureType(nil, nil, nil, prepend(recv, sig.Params()), sig.Results(), sig.Variadic())
 	lit := l.forward(full, func(args []ast.Expr, ellipsis bool) *ast.CallExpr {
 		tg := l.method(args[0], recv, fn.Name(), fn.Pkg())
 		return spread(l.callTarget(tg, args[1:], sig), ellipsis)
 	})
-	_ = p
 	l.prolog = append(l.prolog, exprStmt(hostCall("Register", intLit(r.id), strLit(fn.Name()), strLit(l.typeKey(stripRecv(sig))),
 		ast.NewIdent(strconv.FormatBool(!byValue)), lit)))
 }

@@ -106,8 +106,6 @@ func (l *lowerer) dynamic(t types.Type) bool { return isDynamic(t, l.u.pkg) }
 // real reports whether an interface type stays what it is: error and those that compiled packages name.
 func (l *lowerer) real(t types.Type) bool { return types.IsInterface(t) && !l.dynamic(t) }
 
-var anyExpr = ast.NewIdent("any")
-
 // typ writes a type in lowered code.
 func (l *lowerer) typ(t types.Type) ast.Expr {
 	t = types.Unalias(l.sub(t))

@@ -182,7 +182,7 @@ func (u *unit) assemble(vars, bodies bool) *parseError {
 	if u.body, err = u.sp.parseBody(u.pl); err != nil {
 		return err
 	}
-	a := &assembler{unit: u, vars: vars, bodies: bodies, imports: map[string]string{}, musts: true}
+	a := &assembler{unit: u, vars: vars, bodies: bodies, imports: map[string]string{}}
 	for d := range u.fresh {
 		if d.broken == nil {
 			if err := a.definition(d, d.names[0]); err != nil {
@@ -200,9 +200,7 @@ func (u *unit) assemble(vars, bodies bool) *parseError {
 type assembler struct {
 	*unit
 	vars, bodies bool
-	musts        bool
 	imports      map[string]string
-	done         map[string]bool
 	list         []ast.Decl
 }
 

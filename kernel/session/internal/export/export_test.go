@@ -41,6 +41,7 @@ func readExport(t *testing.T, file, path string) *types.Package {
 		t.Fatal(err)
 	}
 	defer f.Close()
+	//lint:ignore SA1019 the go command names archive files
 	r, err := gcexportdata.NewReader(f)
 	if err != nil {
 		t.Fatal(err)

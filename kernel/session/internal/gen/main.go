@@ -110,6 +110,7 @@ func load(paths []string, byPath map[string]*listed) ([]*types.Package, error) {
 		if err != nil {
 			return nil, err
 		}
+		//lint:ignore SA1019 the go command names archive files
 		r, err := gcexportdata.NewReader(f)
 		if err != nil {
 			return nil, fmt.Errorf("%s: %w", path, err)
