@@ -1,7 +1,6 @@
 package continuation
 
 import (
-	"context"
 	"errors"
 	"fmt"
 	"go/types"
@@ -137,7 +136,7 @@ func (e *exact) open() *tape.Family {
 		p := e.m.values()
 		_, params := e.m.equations.own().user(make([]float64, len(e.m.states)), p)
 		e.family = tape.NewFamily(e.src, tape.Settings{
-			States: len(e.m.states), Params: params, Context: context.Background(),
+			States: len(e.m.states), Params: params, Context: e.m.context,
 		})
 		e.checked = map[*tape.Program]bool{}
 	}

@@ -14,12 +14,18 @@ type exactRun struct {
 	plain    equations
 	fallback Differentiator
 
+	*machines // of the program in use, nil before there is one
+	others    map[*tape.Program]*machines
+	in        tape.Inputs
+	useless   bool // the model was refused for good
+}
+
+// machines run one program.
+type machines struct {
 	program  *tape.Program
 	values   *tape.Machine
 	jacobian []*tape.Machine // by free parameter + 1
-	machines map[derivative]*tape.Machine
-	in       tape.Inputs
-	useless  bool // the model was refused for good
+	rare     map[derivative]*tape.Machine
 }
 
 // A derivative names one of the machines that are not used at every step.
@@ -34,7 +40,7 @@ func (d *exactRun) ready(x, p []float64) bool {
 	if d.useless {
 		return false
 	}
-	if d.program != nil && d.program.Current() {
+	if d.machines != nil && d.program.Current() {
 		return true
 	}
 	return d.change(x, p)
@@ -47,12 +53,15 @@ func (d *exactRun) change(x, p []float64) bool {
 		d.useless = refused
 		return false
 	}
-	if q != d.program {
-		*d = exactRun{e: d.e, s: d.s, plain: d.plain, fallback: d.fallback, program: q}
-		d.values = q.Value().NewMachine()
-		d.jacobian = make([]*tape.Machine, len(p)+1)
-		d.machines = map[derivative]*tape.Machine{}
+	m := d.others[q]
+	if m == nil {
+		m = &machines{program: q, values: q.Value().NewMachine(), jacobian: make([]*tape.Machine, len(p)+1), rare: map[derivative]*tape.Machine{}}
+		if d.others == nil || len(d.others) > 100 {
+			d.others = map[*tape.Program]*machines{}
+		}
+		d.others[q] = m
 	}
+	d.machines = m
 	return true
 }
 
@@ -68,7 +77,7 @@ func (d *exactRun) value(x, p, f []float64) bool {
 	return true
 }
 
-func (d *exactRun) jacobianMachine(j int) *tape.Machine {
+func (d *machines) jacobianMachine(j int) *tape.Machine {
 	m := d.jacobian[j+1]
 	if m == nil {
 		m = d.program.Jacobian(j).NewMachine()
@@ -109,8 +118,8 @@ func (d *exactRun) undefined(x, p []float64, j, i int, v float64, width int) err
 }
 
 // machine returns the machine of a derivative.
-func (d *exactRun) machine(q derivative) *tape.Machine {
-	m := d.machines[q]
+func (d *machines) machine(q derivative) *tape.Machine {
+	m := d.rare[q]
 	if m == nil {
 		switch {
 		case q.single:
@@ -120,7 +129,7 @@ func (d *exactRun) machine(q derivative) *tape.Machine {
 		default:
 			m = d.program.Directional(q.free, q.along).NewMachine()
 		}
-		d.machines[q] = m
+		d.rare[q] = m
 	}
 	return m
 }
@@ -156,7 +165,7 @@ func (d *exactRun) evaluate(q derivative, x, p, out []float64) (bool, error) {
 
 // Accuracy returns the relative error of first derivatives.
 func (d *exactRun) Accuracy() float64 {
-	if d.program == nil {
+	if d.machines == nil {
 		return accuracy(d.fallback)
 	}
 	return epsilon

@@ -20,6 +20,7 @@ type Family struct {
 
 	mu       sync.Mutex
 	programs []*Program // the last one used first
+	probes   map[*Program]*Machine
 	recorded int
 }
 
@@ -31,9 +32,15 @@ func NewFamily(src *Source, set Settings) *Family { return &Family{src: src, set
 func (f *Family) At(x, p []float64) (*Program, error) {
 	f.mu.Lock()
 	defer f.mu.Unlock()
-	f.programs = slices.DeleteFunc(f.programs, func(q *Program) bool { return !q.Current() })
+	f.programs = slices.DeleteFunc(f.programs, func(q *Program) bool {
+		if q.Current() {
+			return false
+		}
+		delete(f.probes, q)
+		return true
+	})
 	for i, q := range f.programs {
-		if len(q.guards) == 0 || q.Value().NewMachine().Run(x, p) {
+		if f.holds(q, x, p) {
 			f.programs = slices.Insert(slices.Delete(f.programs, i, i+1), 0, q)
 			return q, nil
 		}
@@ -50,6 +57,22 @@ func (f *Family) At(x, p []float64) (*Program, error) {
 	f.recorded++
 	f.programs = slices.Insert(f.programs, 0, q)
 	return q, nil
+}
+
+// holds reports whether the guards of a program hold.
+func (f *Family) holds(q *Program, x, p []float64) bool {
+	if len(q.guards) == 0 {
+		return true
+	}
+	m := f.probes[q]
+	if m == nil {
+		m = q.Value().NewMachine()
+		if f.probes == nil {
+			f.probes = map[*Program]*Machine{}
+		}
+		f.probes[q] = m
+	}
+	return m.Run(x, p)
 }
 
 // First returns the program used last, or records one at a point of the caller's

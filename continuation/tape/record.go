@@ -28,8 +28,9 @@ type Settings struct {
 	// X and P are the sample point, by which guards choose their side. Nil: all
 	// states are 1, and the parameters are those in Params.
 	X, P []float64
-	// Context ends a recording early; nil never does.
-	Context context.Context
+	// Context gives a recording the context that can end it early; nil: nothing
+	// can.
+	Context func() context.Context
 }
 
 // Record turns a model into a tape. An error is a *[Refusal], or the error of the
@@ -42,12 +43,14 @@ func Record(src *Source, set Settings) (*Program, error) {
 	if src.decls == nil {
 		src.declarations()
 	}
-	if set.Context == nil {
-		set.Context = context.Background()
+	ctx := context.Background()
+	if set.Context != nil {
+		ctx = set.Context()
 	}
 	guarded := map[token.Pos]bool{}
 	for {
 		r := newRecorder(src, set, guarded)
+		r.ctx = ctx
 		p, again, err := r.run()
 		if !again {
 			return p, err
@@ -62,6 +65,7 @@ func Record(src *Source, set Settings) (*Program, error) {
 type recorder struct {
 	src      *Source
 	settings Settings
+	ctx      context.Context
 	g        *graph
 	p        *Program
 
@@ -139,7 +143,7 @@ func (r *recorder) work(at ast.Node, n int) {
 		r.refuse(at, "the model takes too long to record")
 	}
 	if before>>12 != r.steps>>12 {
-		if err := r.settings.Context.Err(); err != nil {
+		if err := r.ctx.Err(); err != nil {
 			panic(stopped{err})
 		}
 	}

@@ -182,7 +182,7 @@ func TestRecordingEndsWithItsContext(t *testing.T) {
 	}
 	ctx, cancel := context.WithCancel(context.Background())
 	cancel()
-	_, err = tape.Record(src, tape.Settings{States: 1, Context: ctx})
+	_, err = tape.Record(src, tape.Settings{States: 1, Context: func() context.Context { return ctx }})
 	if !errors.Is(err, context.Canceled) {
 		t.Errorf("error %v", err)
 	}
