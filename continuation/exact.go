@@ -105,6 +105,7 @@ func (e *exact) Describe() string {
 	if places := p.Guards(); len(places) > 0 {
 		words = append(words, "follows one side of the conditions at "+strings.Join(places, ", "))
 	}
+	words = append(words, p.Notes()...)
 	return strings.Join(words, "; ")
 }
 

@@ -58,6 +58,7 @@ func (r *recorder) decide(at ast.Node, cond value, yes, no func() flow) flow {
 		r.refuse(at, "the condition cannot be recorded")
 	}
 	id := cond.id()
+	r.noteMend(at, id)
 	not := r.not(id)
 	f, first, exits := r.under(at, id, yes)
 	g, second, more := r.under(at, not, no)

@@ -225,9 +225,7 @@ func (c *compiler) place(in *instr, now, temps int32) {
 			gone++
 		}
 	}
-	for _, r := range freed[:gone] {
-		c.free = append(c.free, r)
-	}
+	c.free = append(c.free, freed[:gone]...)
 	id := in.d
 	if c.reg[id] < 0 {
 		if k := len(c.free); k > 0 {

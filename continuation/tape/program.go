@@ -19,6 +19,7 @@ type Program struct {
 	hidden  []hidden
 	watches []watch
 	guards  []guard
+	notes   []string
 
 	base   int32       // number of nodes of f; later ones are derivatives
 	pos    []token.Pos // of the nodes of f

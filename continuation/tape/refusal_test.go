@@ -351,3 +351,22 @@ func model(u []float64, q Params, f []float64) {
 		}
 	}
 }
+
+func TestMendedQuotientsAreNoted(t *testing.T) {
+	for condition, want := range map[string]string{
+		"math.Abs(x) < 1e-6":    "line 4: one side is for sizes below 1e-06 only; derivatives there are those of that side",
+		"x*x <= 1e-9":           "line 4: one side is for sizes below 1e-09 only; derivatives there are those of that side",
+		"!(1e-6 < math.Abs(x))": "line 4: one side is for sizes below 1e-06 only; derivatives there are those of that side",
+		"x == 0":                "line 4: one side is for the single value 0; derivatives there are those of that side",
+		"x < 1e-6":              "",
+		"math.Abs(x) < 2":       "",
+	} {
+		p, err := recordText("type Params struct { A float64; N int }\nfunc model(u []float64, q Params, f []float64) {\n\tx := u[0]\n\tif "+condition+" {\n\t\tf[0] = 1 - x/2\n\t} else {\n\t\tf[0] = x / math.Expm1(x)\n\t}\n}", nil)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if got := strings.Join(p.Notes(), "|"); got != want {
+			t.Errorf("%s: notes %q, want %q", condition, got, want)
+		}
+	}
+}

@@ -392,7 +392,7 @@ func truthTable(u []float64, q Params, f []float64) {
 	}
 	d := a
 	d = d || b && c
-	if d == true {
+	if d == !false {
 		f[0]++
 	}
 }
