@@ -21,12 +21,9 @@ func (l *lowerer) labeled(s *ast.LabeledStmt) []ast.Stmt {
 	case *ast.SelectStmt:
 		return l.selectStmt(inner, name)
 	}
-	list := l.stmt(s.Stmt)
-	if len(list) == 0 {
-		list = []ast.Stmt{&ast.BlockStmt{}}
-	}
-	list[0] = &ast.LabeledStmt{Label: ast.NewIdent(name), Stmt: list[0]}
-	return list
+	// The label stands before a statement that does something: of labels that only lead to gotos the interpreter never finds the end.
+	step := assign(ast.NewIdent(callsVar), ast.NewIdent(callsVar))
+	return append([]ast.Stmt{&ast.LabeledStmt{Label: ast.NewIdent(name), Stmt: step}}, l.stmt(s.Stmt)...)
 }
 
 func label(name string, s ast.Stmt) ast.Stmt {

@@ -577,8 +577,9 @@ func (l *lowerer) returnStmt(s *ast.ReturnStmt) []ast.Stmt {
 	var before []ast.Stmt
 	for i, r := range s.Results {
 		x := l.exprTo(r, l.results[i])
-		if len(l.named) > 1 && l.u.info.Types[r].Value == nil {
-			// All results are evaluated before the named ones change.
+		_, isFunc := l.results[i].Underlying().(*types.Signature)
+		if len(l.named) > 1 && l.u.info.Types[r].Value == nil || isFunc && !isNil(l.typeOf(r)) {
+			// All results are evaluated before the named ones change, and the interpreter returns a function only from a variable.
 			n := l.temp("r")
 			before = append(before, varStmt(n, l.typ(l.results[i]), x))
 			x = ast.NewIdent(n)
