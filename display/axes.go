@@ -24,8 +24,9 @@ type side struct {
 
 // sides chooses what stands on the axes.
 func (f *Figure) sides() (x, y side, err error) {
-	x, err = f.named(f.xName())
-	if err != nil {
+	if f.timed() {
+		x = timeSide()
+	} else if x, err = f.named(f.xName()); err != nil {
 		return x, y, err
 	}
 	x.log, x.shown = f.logX, f.rangeX

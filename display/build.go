@@ -74,6 +74,13 @@ func (f *Figure) notes() []string {
 			notes = append(notes, sentenceCase(n))
 		}
 	}
+	for _, it := range f.motions() {
+		text := it.word
+		if text == "" {
+			text = it.motion.Ended
+		}
+		notes = append(notes, sentenceCase(text))
+	}
 	return notes
 }
 

@@ -10,7 +10,7 @@ import (
 	"brinkline/continuation"
 )
 
-// A Figure is a picture of branches, loci, steady states, special points and
+// A Figure is a picture of branches, loci, trajectories, steady states, special points and
 // margins, or of eigenvalues.
 // Its methods change it and return it, so that calls can be chained; the first
 // error of a chain is kept, see [Figure.Err].
@@ -40,11 +40,12 @@ type interval struct {
 	set       bool
 }
 
-// Plot makes a figure of branches, loci, steady states, special points and
+// Plot makes a figure of branches, loci, trajectories, steady states, special points and
 // margins, and of slices of them. The followed parameter of the first branch is on
 // the x axis and its first state on the y axis unless [Figure.X] and [Figure.Y] say
 // otherwise; with a locus, its two parameters are. In such a plane of two
 // parameters a branch is a thin line with its special points.
+// Trajectories alone stand over time.
 //
 // A steady state is a small dot with the value of the x axis beside it; Mark gives
 // it another word. A margin is an arrow from the steady state to the limit.

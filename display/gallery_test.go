@@ -159,10 +159,28 @@ func locusGallery(t testing.TB, figures map[string]*Figure) {
 	figures["fansoft"] = Plot(degenerate(t, -1))
 	figures["fanhard"] = Plot(degenerate(t, 1)).Y("Y")
 	figures["fantakens"] = Plot(rocker)
+	motionGallery(t, figures)
 	figures["eigentank"] = Eigenvalues(path)
 	figures["eigenpoint"] = Eigenvalues(start)
 	figures["eigenstrut"] = Eigenvalues(strutBranch(t))
 	figures["eigenfeeder"] = Eigenvalues(feederBranch(t))
 	figures["eigenfour"] = Eigenvalues(hopfHopf(t).Points()[3])
 	figures["eigentakens"] = Eigenvalues(rocker)
+}
+
+func motionGallery(t testing.TB, figures map[string]*Figure) {
+	m := newModel(t, wheel, wheelParams{Drive: 0.5, Spin: 2}, continuation.Named("wheel"))
+	r, err := m.Relax(wheelState{0.1, 0})
+	if err != nil {
+		t.Fatal(err)
+	}
+	figures["motion"] = Plot(r)
+	figures["motion"].captioned = true
+	figures["motionplane"] = Plot(r).X("X").Y("Y")
+	slow, err := newModel(t, tank, tankParams{Inflow: 100, Coolant: 300, Feed: 350}, continuation.Named("tank")).Simulate(tankState{0.1, 310}, 8)
+	if err != nil {
+		t.Fatal(err)
+	}
+	figures["motiontank"] = Plot(slow).Y("Temperature")
+	figures["motiontank"].captioned = true
 }

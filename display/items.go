@@ -12,6 +12,7 @@ import (
 type item struct {
 	branch  *continuation.Branch
 	locus   *continuation.Locus
+	motion  *continuation.Trajectory
 	corner  *continuation.LocusSpecial
 	point   *continuation.Point
 	special continuation.Special
@@ -56,6 +57,10 @@ func (f *Figure) add(v any) error {
 		return f.put(v != nil, "margin", item{margin: v})
 	case *continuation.Margins:
 		return f.addMargins(v)
+	case *continuation.Trajectory:
+		return f.addMotion(v, "")
+	case *continuation.Relaxation:
+		return f.addRelaxation(v)
 	case *continuation.Locus:
 		return f.put(v != nil, "locus", item{locus: v})
 	case *continuation.LocusSpecial:
@@ -110,7 +115,7 @@ func (f *Figure) addOther(v any) error {
 	}
 	list := reflect.ValueOf(v)
 	if list.Kind() != reflect.Slice && list.Kind() != reflect.Array {
-		return fmt.Errorf("a %T cannot be drawn; Plot takes branches, loci, steady states, special points and margins", v)
+		return fmt.Errorf("a %T cannot be drawn; Plot takes branches, loci, trajectories, steady states, special points and margins", v)
 	}
 	for i := range list.Len() {
 		if err := f.add(list.Index(i).Interface()); err != nil {
@@ -153,11 +158,11 @@ func (f *Figure) loci() []*continuation.Locus {
 	return list
 }
 
-// lines returns what is drawn as a curve: branches and loci, in order.
+// lines returns what is drawn as a curve: branches, loci and trajectories, in order.
 func (f *Figure) lines() []item {
 	var list []item
 	for _, it := range f.items {
-		if it.branch != nil || it.locus != nil {
+		if it.branch != nil || it.locus != nil || it.motion != nil {
 			list = append(list, it)
 		}
 	}
@@ -215,6 +220,8 @@ func (it item) model() *continuation.Model {
 		return it.locus.Model()
 	case it.corner != nil:
 		return it.corner.Where.Model()
+	case it.motion != nil:
+		return it.motion.Model()
 	case it.point != nil:
 		return it.point.Model()
 	case it.special != nil:
@@ -234,6 +241,8 @@ func (it item) followed() string {
 	case it.corner != nil:
 		first, _ := it.corner.Where.Pair()
 		return first.Name
+	case it.motion != nil:
+		return ""
 	case it.point != nil:
 		return it.point.Parameter
 	case it.special != nil:

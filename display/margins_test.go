@@ -62,3 +62,37 @@ func TestRealSurvey(t *testing.T) {
 	}
 	t.Log(b.Text())
 }
+
+// TestNearestLimits shows the nearest limit, the probability that it is passed and the
+// second order of the tank's ignition.
+func TestNearestLimits(t *testing.T) {
+	start := tankStart(t)
+	n, err := start.NearestLimit(map[string]float64{"Coolant": 1, "Inflow": 5})
+	if err != nil {
+		t.Fatal(err)
+	}
+	c, err := start.Chance(continuation.Scatter(continuation.Normal("Coolant", 300, 0.7), continuation.Normal("Inflow", 100, 3)))
+	if err != nil {
+		t.Fatal(err)
+	}
+	second, err := tankBranch(t).Folds()[0].SecondOrder()
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, one := range []struct {
+		v    any
+		want []string
+	}{
+		{n, []string{"Nearest limit of tank: fold", "distance", "Coolant (K)", "share", "no proof", caution}},
+		{c, []string{"Probability that tank passes a limit (fold)", "β = ", "Φ(-β) = ", "Inflow (L/min)", "factor", caution}},
+		{second, []string{"How the fold at Coolant 301.783 K moves", "second derivative", "Inflow (L/min)"}},
+	} {
+		text := Render(one.v).Text()
+		for _, want := range one.want {
+			if !strings.Contains(text, want) {
+				t.Errorf("%q is not in\n%s", want, text)
+			}
+		}
+		t.Log(text)
+	}
+}

@@ -18,9 +18,12 @@ func (f *Figure) names() []string {
 	}
 	branches, loci := f.branchNames(), f.locusNames()
 	for i, it := range f.lines() {
-		if it.branch != nil {
+		switch {
+		case it.branch != nil:
 			names[i], branches = branches[0], branches[1:]
-		} else {
+		case it.motion != nil && len(f.lines()) > 1:
+			names[i] = fmt.Sprintf("trajectory %d", i+1)
+		case it.locus != nil:
 			names[i], loci = loci[0], loci[1:]
 		}
 	}

@@ -25,6 +25,12 @@ func modelOf(v any) *continuation.Model {
 		return modelOf(v.From)
 	case *continuation.DirectionMargin:
 		return modelOf(v.From)
+	case *continuation.NearestLimit:
+		return modelOf(v.From)
+	case *continuation.Chance:
+		return modelOf(v.From)
+	case *continuation.SecondOrder:
+		return modelOf(v.Limit)
 	case *continuation.Sensitivities:
 		return modelOf(v.Limit)
 	case *continuation.LocusSpecial:

@@ -55,6 +55,10 @@ func renderOwn(v any) (Bundle, bool) {
 		return branchBundle(v), true
 	case *continuation.Locus:
 		return locusBundle(v), true
+	case *continuation.Trajectory:
+		return motionBundle(v, v.String()), true
+	case *continuation.Relaxation:
+		return motionBundle(v, v.String()), true
 	case continuation.Progress:
 		return progressBundle(v), true
 	case brancher:
@@ -83,6 +87,12 @@ func card(v any) *Grid {
 		return hopfCard(v)
 	case *continuation.Margin:
 		return marginCard(v)
+	case *continuation.NearestLimit:
+		return nearestCard(v)
+	case *continuation.Chance:
+		return chanceCard(v)
+	case *continuation.SecondOrder:
+		return secondOrderTable(v)
 	case *continuation.Margins:
 		return marginsCard(v)
 	case *continuation.DirectionMargin:

@@ -19,12 +19,13 @@ type scene struct {
 	x, y   side
 }
 
-// A curve is a branch, a locus or an eigenvalue.
+// A curve is a branch, a locus, a trajectory or an eigenvalue.
 type curve struct {
-	runs  []run
-	ink   color.Color
-	label string
-	locus bool
+	runs   []run
+	ink    color.Color
+	label  string
+	locus  bool
+	motion bool // a trajectory
 }
 
 // A run is a part of a curve drawn with one kind of line.
@@ -136,10 +137,12 @@ func (f *Figure) scene() (*scene, error) {
 func (f *Figure) addCurves(s *scene) (err error) {
 	names := f.names()
 	for i, it := range f.lines() {
-		c := curve{ink: inks[len(s.curves)%len(inks)], label: names[i], locus: it.locus != nil}
+		c := curve{ink: inks[len(s.curves)%len(inks)], label: names[i], locus: it.locus != nil, motion: it.motion != nil}
 		switch {
 		case it.locus != nil:
 			c.runs, err = s.locusRuns(it.locus)
+		case it.motion != nil:
+			c.runs, err = s.motionRuns(it.motion)
 		case s.plane():
 			err = s.addPath(it.branch, len(f.loci()) == 0)
 		default:

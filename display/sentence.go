@@ -41,6 +41,9 @@ func (f *Figure) subject(s *scene) string {
 	for _, l := range f.loci() {
 		text += fmt.Sprintf(", locus of %ss with %s", l.Kind(), count(len(l.Points()), "point", "points"))
 	}
+	for _, it := range f.motions() {
+		text += fmt.Sprintf(", trajectory with %s", count(it.motion.Steps, "step", "steps"))
+	}
 	xs, _ := s.values()
 	low, high := math.Inf(1), math.Inf(-1)
 	for _, v := range xs {
@@ -61,7 +64,7 @@ func (f *Figure) findings() string {
 		list = append(list, cornerText(c, cornerDigits))
 	}
 	if len(list) == 0 {
-		if len(f.lines()) == 0 {
+		if len(f.lines()) == len(f.motions()) {
 			return ""
 		}
 		return "No special points."
@@ -98,7 +101,7 @@ func (f *Figure) lineMeaning(s *scene) string {
 	seen := map[lineKind]bool{}
 	for _, c := range s.curves {
 		for _, r := range c.runs {
-			seen[r.line] = seen[r.line] || !c.locus
+			seen[r.line] = seen[r.line] || !(c.locus || c.motion)
 		}
 	}
 	var list []string

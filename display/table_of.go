@@ -32,6 +32,8 @@ func tableOf(v any) *Grid {
 		return branchTable(v)
 	case *continuation.Locus:
 		return locusTable(v)
+	case *continuation.Relaxation:
+		return relaxationTable(v)
 	case brancher:
 		return branchTable(v.Branch())
 	case surveyed:
