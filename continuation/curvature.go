@@ -37,16 +37,11 @@ func (f *Fold) SecondOrder() (*SecondOrder, error) { return secondOrder(f, f.sen
 // SecondOrder returns the second-order sensitivities of the Hopf point, as
 // [Fold.SecondOrder] does.
 func (h *Hopf) SecondOrder() (*SecondOrder, error) {
-	s, err := h.Sensitivities()
+	slopes, err := allSlopes(h)
 	if err != nil {
 		return nil, err
 	}
-	slopes := make([]float64, 0, len(h.point.Parameters))
-	for _, one := range s.List {
-		slopes = append(slopes, one.Slope)
-	}
-	free := h.point.free
-	return secondOrder(h, append(slopes[:free:free], append([]float64{-1}, slopes[free:]...)...))
+	return secondOrder(h, slopes)
 }
 
 // A neighbourhood refines a limit at parameters beside its own.
