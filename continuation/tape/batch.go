@@ -121,9 +121,7 @@ func step1(in *instr, d, a *lane, n int) {
 			d[i] = math.Sqrt(a[i])
 		}
 	case opExp:
-		for i := range n {
-			d[i] = exp(a[i])
-		}
+		expLane(d, a)
 	default:
 		for i := range n {
 			d[i] = apply(in.op, a[i], 0, 0, int(in.c))
@@ -154,8 +152,10 @@ func step2(in *instr, d, a, b *lane, n int) {
 			d[i] = -float64(a[i] * b[i])
 		}
 	case opExpMul:
-		for i := range n {
-			d[i] = exp(a[i]) * b[i]
+		var x lane // d may be b
+		expLane(&x, a)
+		for i := range d {
+			d[i] = x[i] * b[i]
 		}
 	case opLess:
 		for i := range d {
@@ -255,5 +255,30 @@ func product(op Op, d, a, b, c *lane) {
 		for i := range d {
 			d[i] = c[i] / float64(a[i]*b[i])
 		}
+	}
+}
+
+// expLane is exp in all lanes; without calls and branches the processor works on
+// several at once.
+func expLane(d, a *lane) {
+	for i := range a {
+		if !(a[i] > -708 && a[i] < 709) {
+			for k := range d {
+				d[k] = exp(a[k])
+			}
+			return
+		}
+	}
+	for i := range d {
+		x := a[i]
+		t := float64(x*(128/math.Ln2)) + shifter
+		k := int64(math.Float64bits(t)<<12) >> 12
+		n := t - shifter
+		r := (x - float64(n*expHigh)) - float64(n*expLow)
+		e := &expTable[k&127]
+		r2 := float64(r * r)
+		p := r + float64(r2*(0.5+float64(r*(1./6+float64(r*(1./24+float64(r*(1./120))))))))
+		v := e[0] + (e[1] + float64(e[0]*p))
+		d[i] = math.Float64frombits(math.Float64bits(v) + uint64(k>>7)<<52)
 	}
 }

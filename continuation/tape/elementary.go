@@ -24,7 +24,7 @@ func exp(x float64) float64 {
 	if !(x > -708 && x < 709) {
 		return expFar(x)
 	}
-	t := x*(128/math.Ln2) + shifter
+	t := float64(x*(128/math.Ln2)) + shifter
 	k := int64(math.Float64bits(t)<<12) >> 12 // the low bits of t
 	n := t - shifter
 	r := (x - float64(n*expHigh)) - float64(n*expLow)
@@ -79,7 +79,7 @@ func scaleTwice(hi, lo float64, k int) float64 {
 	switch {
 	case k > 1023:
 		return v * 0x1p1023 * power2(k-1023)
-	case k > -1021:
+	case k >= -1022:
 		return v * power2(k)
 	}
 	// Add a number at which the result's last bit is the last there is.

@@ -81,6 +81,7 @@ def cases():
     rng = random.Random(1)
     exps = spread(rng, 1e-300, 1e-20, 50) + spread(rng, 1e-20, 700, 600) + [rng.uniform(-745, 709) for _ in range(600)]
     exps += [rng.uniform(-746, -707) for _ in range(300)] + around([709.782712893384, -708.3964185322641, -745.1332191019411, 0.0])
+    exps += around([-708.2939368026196, -707.7, -708.0])
     exps += around([float(k * mpmath.log(2) / 256) for k in range(-400, 400, 7)])
     logs = [abs(v) for v in spread(rng, 5e-324, 1e-300, 200) + spread(rng, 1e-300, 1e308, 500)] + [rng.uniform(0.6, 1.6) for _ in range(600)]
     logs += [1 + v for v in spread(rng, 1e-16, 0.1, 300)] + around([1.0, 0.70710678, 1.41421356, 2.0] + [i / 256 for i in range(181, 363, 3)])
