@@ -22,6 +22,7 @@ type Model struct {
 	notice     func() string
 
 	sequential bool // from the option Sequential
+	sweeps     *sweepMemory
 
 	named sliceStates // from the option States
 }
@@ -49,7 +50,7 @@ type Option func(*Model) error
 // strings in it are kept. The tags `unit:"K"` and `scale:"300"` of a field carry
 // its unit and its typical size.
 func NewModel(f any, params any, opts ...Option) (*Model, error) {
-	m := &Model{name: "model", context: context.Background}
+	m := &Model{name: "model", context: context.Background, sweeps: &sweepMemory{}}
 	for _, set := range opts {
 		if err := set(m); err != nil {
 			return nil, fmt.Errorf("model %s: %w", m.name, err)
