@@ -129,6 +129,7 @@ func (s *scene) edge(limit interface {
 // addNow marks the values that the model was made with in a plane of parameters,
 // unless the figure has a steady state of the analyst's own, or they lie far off.
 func (f *Figure) addNow(s *scene) {
+	f.nowDrawn = false
 	if !s.plane() || len(f.loci()) == 0 {
 		return
 	}
