@@ -237,6 +237,11 @@ func (s *search) polish(h *hunt, sys *system) (*root, error) {
 	if err != nil {
 		return nil, err
 	}
+	for i, v := range n.x {
+		if math.Abs(v) < 1e-100*s.frame.width[i] {
+			n.x[i] = 0 // Newton's method comes ever nearer, and never to it
+		}
+	}
 	p := &Point{
 		State: n.x, Parameters: slices.Clone(s.p),
 		Unstable: -1, Iterations: h.steps + n.steps, model: s.m, free: -1,
