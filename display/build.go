@@ -62,7 +62,11 @@ func (f *Figure) notes() []string {
 	if !f.captioned {
 		return notes
 	}
+	notes = append(notes, f.diagramNotes()...)
 	for _, b := range f.branches() {
+		if f.inDiagram(b) {
+			continue
+		}
 		notes = append(notes, sentenceCase(endsOf(b)))
 		for _, n := range b.Notes() {
 			notes = append(notes, sentenceCase(n))

@@ -25,6 +25,7 @@ type Figure struct {
 	logX, logY    bool
 	rangeX        interval
 	rangeY        interval
+	diagrams      []*continuation.Diagram
 	captioned     bool // write under the plot where the branches end
 	eigen         *eigenvalues
 	noticed       string // what the models had to say when it was drawn

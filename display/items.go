@@ -61,6 +61,8 @@ func (f *Figure) add(v any) error {
 		return f.addMotion(v, "")
 	case *continuation.Relaxation:
 		return f.addRelaxation(v)
+	case *continuation.Diagram:
+		return f.addDiagram(v)
 	case *continuation.Locus:
 		return f.put(v != nil, "locus", item{locus: v})
 	case *continuation.LocusSpecial:

@@ -57,6 +57,8 @@ func renderOwn(v any) (Bundle, bool) {
 		return locusBundle(v), true
 	case *continuation.Trajectory:
 		return motionBundle(v, v.String()), true
+	case *continuation.Diagram:
+		return diagramBundle(v), true
 	case *continuation.Relaxation:
 		return motionBundle(v, v.String()), true
 	case continuation.Progress:

@@ -34,6 +34,8 @@ func tableOf(v any) *Grid {
 		return locusTable(v)
 	case *continuation.Relaxation:
 		return relaxationTable(v)
+	case *continuation.Diagram:
+		return diagramTable(v)
 	case brancher:
 		return branchTable(v.Branch())
 	case surveyed:
