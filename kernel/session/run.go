@@ -29,6 +29,7 @@ type run struct {
 	mu       sync.Mutex
 	values   []any           // of the last expression
 	assigned map[string]bool // variables that the cell has bound so far
+	binds    []*variable     // variables that the cell binds
 	progress progressMeter
 	full     atomic.Bool   // stopped for its memory
 	ended    chan struct{} // closed when the cell has ended; goroutines of it may go on
@@ -419,6 +420,7 @@ func (s *Session) newModel(name string, f any, params any, opts ...continuation.
 	if name != "" {
 		all = append(all, continuation.Named(name))
 	}
+	all = append(all, s.sourceOptions(name)...)
 	all = append(all, opts...)
 	all = append(all, continuation.WithContext(s.context), continuation.WithObserver(s))
 	return continuation.NewModel(f, params, all...)

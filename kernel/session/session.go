@@ -188,6 +188,7 @@ func (s *Session) Run(ctx context.Context, c Cell, out Output) Result {
 	}
 	r := s.begin(ctx, src, out)
 	defer s.end(r)
+	r.binds = low.vars
 	u.noteBroken(r)
 	res := s.execute(r, prog, u, low)
 	s.tidy()
