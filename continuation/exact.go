@@ -182,14 +182,15 @@ func (e *exact) compare(q *tape.Program, x, p []float64, eq equations) error {
 	if !ok {
 		return nil // nothing to compare with here
 	}
-	m := q.ValueAndJacobian(-1).NewMachine()
+	m := q.ValueAndSparse().NewMachine()
 	m.Run(x, p)
 	out := m.Out()
 	n := len(x)
+	start, cols := q.Pattern()
 	for i := range f {
 		size := math.Abs(f[i])
-		for k := range x {
-			size += math.Abs(out[n+i*n+k] * x[k])
+		for k := start[i]; k < start[i+1]; k++ {
+			size += math.Abs(out[n+k] * x[cols[k]])
 		}
 		if gap := math.Abs(f[i] - out[i]); gap > 1e-9*size || math.IsNaN(f[i]) != math.IsNaN(out[i]) {
 			e.refusal = fmt.Errorf("the source is not that of the function: the equation of %s is %g by the source and %g by the function at %s", e.m.states[i].Name, out[i], f[i], whereabouts(e.m.states, x))
