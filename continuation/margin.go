@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"strconv"
 )
 
 // A Margin is how far the parameter can still be pushed from a steady state
@@ -103,17 +104,25 @@ type Sensitivities struct {
 }
 
 // Ranked returns the sensitivities by falling size of the elasticity; where the limit
-// is at 0, of value times slope.
+// is at 0, of value times slope. Those that are equal up to rounding keep the order of
+// the model's parameters, and undefined ones come last.
 func (s *Sensitivities) Ranked() []Sensitivity {
 	list := slices.Clone(s.List)
-	weight := func(one Sensitivity) float64 {
-		if w := math.Abs(one.Elasticity); !math.IsNaN(w) {
-			return w
-		}
-		return math.Abs(one.Value * one.Slope)
-	}
-	slices.SortStableFunc(list, func(a, b Sensitivity) int { return cmp.Compare(weight(b), weight(a)) })
+	slices.SortStableFunc(list, func(a, b Sensitivity) int { return cmp.Compare(b.weight(), a.weight()) })
 	return list
+}
+
+// weight is what a sensitivity is ranked by, to six digits.
+func (s Sensitivity) weight() float64 {
+	w := math.Abs(s.Elasticity)
+	if math.IsNaN(w) {
+		w = math.Abs(s.Value * s.Slope)
+	}
+	if math.IsNaN(w) {
+		return -1
+	}
+	w, _ = strconv.ParseFloat(strconv.FormatFloat(w, 'e', 5, 64), 64)
+	return w
 }
 
 // A Sensitivity is that of a limit λ* to another parameter p.

@@ -312,7 +312,7 @@ func sensitivitiesTable(s *continuation.Sensitivities) *Grid {
 		caption: fmt.Sprintf("How the %s moves with the other parameters, to first order", briefly(s.Limit)),
 		columns: []column{{"parameter", false}, {"now", true}, {"shift of " + q.Name + " per unit", true}, {"", false}, {"percent per percent", true}},
 	}
-	for _, one := range ranked(s.List) {
+	for _, one := range s.Ranked() {
 		per := ratioUnit(q.Unit, one.Unit)
 		g.add(one.Name, withUnit(significant(one.Value, stateDigits), one.Unit), significant(one.Slope, vectorDigits), per, significant(one.Elasticity, vectorDigits))
 	}
