@@ -7,6 +7,7 @@ import (
 	"math"
 	"math/rand/v2"
 	"slices"
+	"strings"
 	"sync/atomic"
 	"testing"
 
@@ -342,5 +343,41 @@ func BenchmarkSurvey(b *testing.B) {
 				surveyed(b, m, continuation.Box{"X": {-1.5, 1.5}}, continuation.Workers(workers))
 			}
 		})
+	}
+}
+
+// A model that brings its source is surveyed with exact derivatives, on several cores
+// too.
+func TestSurveyWithSource(t *testing.T) {
+	const source = `package p
+type scalar struct{ X float64 }
+type lambda struct{ L float64 }
+func model(s scalar, q lambda) scalar {
+	if s.X > 0.5 {
+		return scalar{(s.X - q.L) * (s.X - 0.6)}
+	}
+	return scalar{(s.X - q.L) * (s.X - 0.6) * (1 + 10*(s.X-0.5)*(s.X-0.5)*(s.X+0.1))}
+}`
+	m, err := continuation.NewModel(func(s scalar, q lambda) scalar {
+		if s.X > 0.5 {
+			return scalar{(s.X - q.L) * (s.X - 0.6)}
+		}
+		return scalar{(s.X - q.L) * (s.X - 0.6) * (1 + 10*(s.X-0.5)*(s.X-0.5)*(s.X+0.1))}
+	}, lambda{-0.3}, continuation.WithSource("model", source))
+	if err != nil {
+		t.Fatal(err)
+	}
+	var want *continuation.Survey
+	for _, workers := range []int{1, 2, 4} {
+		s := surveyed(t, m, continuation.Box{"X": {-1, 1}}, continuation.Workers(workers))
+		if want == nil {
+			want = s
+		}
+		if len(s.Points()) != 3 || s.Statement() != want.Statement() || !slices.Equal(s.Points()[0].State, want.Points()[0].State) {
+			t.Errorf("on %d cores %v: %v, want %v", workers, s, s.Points(), want)
+		}
+	}
+	if note := m.DerivativesNote(); strings.Contains(note, "finite") {
+		t.Errorf("derivatives: %s", note)
 	}
 }
