@@ -135,7 +135,7 @@ func TestChanceOfQuadraticLimitStates(t *testing.T) {
 func TestChanceOfTwoLimits(t *testing.T) {
 	today := newLimitState(t, limitState{}, func(q limitState) float64 { return (2.5 - q.A + 0.1*q.B) * (2.6 + q.A) })
 	c := chanceOf(t, today, continuation.Scatter(continuation.Normal("A", 0, 1), continuation.Normal("B", 0, 1)))
-	within(t, c, integral(func(b float64) float64 { return phi.CDF(-2.5-0.1*b) })+phi.CDF(-2.6))
+	within(t, c, integral(func(b float64) float64 { return phi.CDF(-2.5 - 0.1*b) })+phi.CDF(-2.6))
 	if len(c.Nearest.Others) != 1 {
 		t.Errorf("other places: %v", c.Nearest.Others)
 	}

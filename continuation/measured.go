@@ -15,6 +15,8 @@ type Measured struct {
 	// Errors are standard deviations in the order of Rows and Columns, NaN where none is
 	// given.
 	Errors [][]float64
+
+	model *Model
 }
 
 const errorPrefix = "error "
@@ -35,7 +37,7 @@ func (m *Model) readMeasured(r io.Reader) (*Measured, error) {
 	if err != nil {
 		return nil, err
 	}
-	d := &Measured{}
+	d := &Measured{model: m}
 	var columns, errors []int
 	for i, h := range s.header {
 		if strings.HasPrefix(h, errorPrefix) {
@@ -102,6 +104,31 @@ func (d *Measured) Column(name string) ([]float64, error) {
 		out[k] = row[i]
 	}
 	return out, nil
+}
+
+// Model returns the model whose variables were measured.
+func (d *Measured) Model() *Model { return d.model }
+
+// Points returns the measured points as points of the model, for pictures: what was not
+// measured is NaN if it is a state, and as the model has it if it is a parameter. They are
+// no steady states.
+func (d *Measured) Points() []*Point {
+	list := make([]*Point, len(d.Rows))
+	for i, row := range d.Rows {
+		p := &Point{State: make([]float64, len(d.model.states)), Parameters: d.model.values(), Unstable: -1, model: d.model, free: -1}
+		for k := range p.State {
+			p.State[k] = math.NaN()
+		}
+		for k, c := range d.Columns {
+			if at := find(d.model.states, c.Name); at >= 0 {
+				p.State[at] = row[k]
+			} else if at := find(d.model.parameterVariables(), c.Name); at >= 0 && !math.IsNaN(row[k]) {
+				p.Parameters[at] = row[k]
+			}
+		}
+		list[i] = p
+	}
+	return list
 }
 
 // String says the data in one line.

@@ -63,6 +63,10 @@ func (f *Figure) add(v any) error {
 		return f.addRelaxation(v)
 	case *continuation.Diagram:
 		return f.addDiagram(v)
+	case *continuation.Family:
+		return f.addFamily(v)
+	case *continuation.Measured:
+		return f.add(v.Points())
 	case *continuation.Locus:
 		return f.put(v != nil, "locus", item{locus: v})
 	case *continuation.LocusSpecial:

@@ -59,6 +59,10 @@ func renderOwn(v any) (Bundle, bool) {
 		return motionBundle(v, v.String()), true
 	case *continuation.Diagram:
 		return diagramBundle(v), true
+	case *continuation.Family:
+		return familyBundle(v), true
+	case *continuation.MarginScatter:
+		return scatterBundle(v), true
 	case *continuation.Relaxation:
 		return motionBundle(v, v.String()), true
 	case continuation.Progress:
@@ -95,6 +99,12 @@ func card(v any) *Grid {
 		return chanceCard(v)
 	case *continuation.SecondOrder:
 		return secondOrderTable(v)
+	case *continuation.Family:
+		return familyTable(v)
+	case *continuation.Fit:
+		return fitTable(v)
+	case *continuation.Measured:
+		return measuredTable(v)
 	case *continuation.Margins:
 		return marginsCard(v)
 	case *continuation.DirectionMargin:
