@@ -74,13 +74,51 @@ func (r *recorder) binary(e *ast.BinaryExpr) value {
 		}
 		return v
 	case token.LSS, token.LEQ, token.GTR, token.GEQ:
-		x, y := r.expr(e.X), r.expr(e.Y)
-		r.g.at = e.OpPos
+		x, y := r.operands(e)
 		return r.ordered(e, x, y)
 	}
-	x, y := r.expr(e.X), r.expr(e.Y)
-	r.g.at = e.OpPos
+	x, y := r.operands(e)
 	return r.arithmetic(e, e.Op, x, y, r.typeOf(e))
+}
+
+// operands evaluates both sides. Where the right side calls a function that
+// changes what the left side reads, the language leaves open which value counts,
+// and compilers differ.
+func (r *recorder) operands(e *ast.BinaryExpr) (x, y value) {
+	x, y = r.expr(e.X), r.expr(e.Y)
+	if r.calls(e.Y) && !r.calls(e.X) && !same(x, r.expr(e.X)) {
+		r.refuse(e, "the right side changes what the left side reads; the language leaves their order open")
+	}
+	r.g.at = e.OpPos
+	return x, y
+}
+
+// calls reports whether an expression calls a function of the model.
+func (r *recorder) calls(e ast.Expr) bool {
+	if known, ok := r.calling[e]; ok {
+		return known
+	}
+	found := false
+	ast.Inspect(e, func(n ast.Node) bool {
+		c, ok := n.(*ast.CallExpr)
+		if !ok || found {
+			return !found
+		}
+		fun := ast.Unparen(c.Fun)
+		if s, ok := fun.(*ast.SelectorExpr); ok {
+			if f, ok := r.src.Info.Uses[s.Sel].(*types.Func); ok && f.Pkg() != nil && f.Pkg().Path() == "math" {
+				return true
+			}
+		}
+		tv := r.src.Info.Types[fun]
+		found = !tv.IsType() && !tv.IsBuiltin()
+		return !found
+	})
+	if r.calling == nil {
+		r.calling = map[ast.Expr]bool{}
+	}
+	r.calling[e] = found
+	return found
 }
 
 func (r *recorder) negate(v value) value {

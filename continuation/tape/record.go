@@ -80,7 +80,8 @@ type recorder struct {
 	depth   int
 	steps   int
 
-	outer map[types.Object]*cell
+	outer   map[types.Object]*cell
+	calling map[ast.Expr]bool // expressions that call functions of the model
 }
 
 func newRecorder(src *Source, set Settings, guarded map[token.Pos]bool) *recorder {

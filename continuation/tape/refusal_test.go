@@ -119,6 +119,11 @@ func deep(x float64) float64 {
 	f[0] = u[0] * float64(3/n) // an integer is divided by zero
 }`,
 	`func model(u []float64, q Params, f []float64) {
+	x := u[0]
+	f[0] = x + change(&x) // the right side changes what the left side reads; the language leaves their order open
+}
+func change(p *float64) float64 { *p = 10; return 1 }`,
+	`func model(u []float64, q Params, f []float64) {
 	var p *float64
 	f[0] = u[0] * *p // a nil pointer is followed
 }`,
