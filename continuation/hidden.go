@@ -19,8 +19,7 @@ func (t *tracer) hidden(z, a, b *node) (before, after []*node, err error) {
 	if t.plan.spectra == noValues || z.special != nil || a.special != nil || b.special != nil {
 		return nil, nil, nil
 	}
-	old, new := t.proved(z, a, b)
-	if new && old {
+	if b.clear = t.proved(z, a, b); b.clear {
 		return nil, nil, nil
 	}
 	defer func(usual bool) { t.stable.want = usual }(t.stable.want)
@@ -32,9 +31,9 @@ func (t *tracer) hidden(z, a, b *node) (before, after []*node, err error) {
 	}
 	switch s, ok := vertex(z, a, b); {
 	case !ok:
-	case s < a.arc && !old:
+	case s < a.arc && !a.clear:
 		before, err = t.probe(z, a, s, hiddenTrys)
-	case s >= a.arc && !new:
+	case s >= a.arc:
 		after, err = t.probe(a, b, s, hiddenTrys)
 	}
 	return before, after, err

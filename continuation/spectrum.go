@@ -16,10 +16,11 @@ const (
 // A stability keeps what is known of the eigenvalues along a run: the proof of the
 // count that serves at present, and a number that tells one proof from the next.
 type stability struct {
-	proof  linalg.Certificate
-	serial int
-	eig    linalg.Eigen
-	want   bool // eigenvalues, not the count alone, just now
+	proof   linalg.Certificate
+	serial  int
+	eig     linalg.Eigen
+	control []float64
+	want    bool // eigenvalues, not the count alone, just now
 }
 
 // forget drops the proof: the scales have changed.
@@ -100,25 +101,24 @@ func (t *tracer) withValues(c *arc, work func() error) error {
 	return work()
 }
 
-// proved reports for the arcs (z, a) and (a, b) whether the certificate at hand
-// proves that no eigenvalue crosses the axis on them and returns: whether it holds
-// at the ends and, since the matrices between two nodes do not lie on a straight
-// line, at the middle control point of the parabola through the three. What holds
-// at the three control points holds on all of the parabola.
-func (t *tracer) proved(z, a, b *node) (before, after bool) {
+// proved reports whether the certificate at hand proves that no eigenvalue crosses
+// the axis between a and b and returns: whether it holds at both ends and, since the
+// matrices between two nodes do not lie on a straight line, at the middle control
+// point of the parabola through these and the node z before them. What holds at
+// the three control points holds on all of the parabola.
+func (t *tracer) proved(z, a, b *node) bool {
 	if z.fx == nil || a.fx == nil || b.fx == nil || !t.holdsAt(b) || !t.holdsAt(a) {
-		return false, false
+		return false
 	}
 	h1, h2 := a.arc-z.arc, b.arc-a.arc
-	control := make([]float64, len(a.fx))
-	at := func(reach float64) bool {
-		for i, v := range a.fx {
-			d1, d2 := (v-z.fx[i])/h1, (b.fx[i]-v)/h2
-			control[i] = v + reach*(d1*h2+d2*h1)/(h1+h2)
-		}
-		return t.stable.proof.Holds(control, t.n)
+	if len(t.stable.control) != len(a.fx) {
+		t.stable.control = make([]float64, len(a.fx))
 	}
-	return t.holdsAt(z) && at(-h1/2), at(h2 / 2)
+	for i, v := range a.fx {
+		d1, d2 := (v-z.fx[i])/h1, (b.fx[i]-v)/h2
+		t.stable.control[i] = v + h2/2*(d1*h2+d2*h1)/(h1+h2)
+	}
+	return t.stable.proof.Holds(t.stable.control, t.n)
 }
 
 // holdsAt reports whether the certificate at hand holds at a node.

@@ -20,6 +20,7 @@ type node struct {
 
 	eigenvalues []complex128 // nil where the count was proved without them
 	unstable    int
+	clear       bool      // proved: no eigenvalue crossed and returned on the way here
 	proof       int       // number of the certificate that holds here, 0 for none
 	fx          []float64 // f_x in scaled states; kept for the latest nodes only
 

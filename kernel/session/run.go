@@ -422,7 +422,8 @@ func (s *Session) newModel(name string, f any, params any, opts ...continuation.
 	}
 	all = append(all, s.sourceOptions(name)...)
 	all = append(all, opts...)
-	all = append(all, continuation.WithContext(s.context), continuation.WithObserver(s))
+	all = append(all, continuation.WithContext(s.context), continuation.WithObserver(s),
+		continuation.Sequential()) // the interpreter serves one call at a time
 	return continuation.NewModel(f, params, all...)
 }
 
