@@ -2,11 +2,13 @@ package display
 
 import (
 	"fmt"
+	"image/color"
 	"math"
 
 	"gonum.org/v1/plot"
 	"gonum.org/v1/plot/plotter"
 	"gonum.org/v1/plot/vg"
+	"gonum.org/v1/plot/vg/draw"
 
 	"brinkline/continuation"
 )
@@ -44,8 +46,14 @@ func histogram(s *continuation.MarginScatter) (*picture, error) {
 		if err != nil {
 			return nil, err
 		}
-		line.Color, line.Width = ink, axisWidth
-		p.Add(line)
+		line.Color, line.Width = ink, 2*axisWidth
+		words, err := plotter.NewLabels(plotter.XYLabels{XYs: plotter.XYs{{X: 0, Y: p.Y.Max}}, Labels: []string{" limit passed where the margin is " + passedSide(s)}})
+		if err != nil {
+			return nil, err
+		}
+		words.TextStyle[0] = textStyle(labelSize, ink, draw.XLeft, draw.YBottom)
+		p.Y.Max *= 1.08
+		p.Add(line, words)
 	}
 	text := sentenceCase(s.String())
 	if s.Missing > 0 {
@@ -57,13 +65,20 @@ func histogram(s *continuation.MarginScatter) (*picture, error) {
 	}, nil
 }
 
+func passedSide(s *continuation.MarginScatter) string {
+	if s.Upward {
+		return "below 0"
+	}
+	return "above 0"
+}
+
 // rectangle is a box in the colours of the theme.
 func rectangle(x0, y0, x1, y1 float64) (plot.Plotter, error) {
 	box, err := plotter.NewPolygon(plotter.XYs{{X: x0, Y: y0}, {X: x1, Y: y0}, {X: x1, Y: y1}, {X: x0, Y: y1}})
 	if err != nil {
 		return nil, err
 	}
-	box.Color = faint
+	box.Color = color.Gray{Y: 205}
 	box.LineStyle.Color, box.LineStyle.Width = ink, axisWidth/2
 	return box, nil
 }
@@ -109,6 +124,12 @@ func bars(s *continuation.Sensitivities) (*picture, error) {
 		text += fmt.Sprintf(" %s %s;", one.Name, significant(one.Elasticity, 3))
 	}
 	text = text[:len(text)-1] + "."
+	zero, err := plotter.NewLine(plotter.XYs{{X: 0, Y: -0.7}, {X: 0, Y: float64(len(list)) - 0.3}})
+	if err != nil {
+		return nil, err
+	}
+	zero.Color, zero.Width = ink, axisWidth
+	p.Add(zero)
 	p.NominalY(names...)
 	p.Y.Width = 0
 	p.X.Label.Text = "percent of " + s.Limit.Parameter().Name + " at the " + s.Limit.Kind() + " per percent"
