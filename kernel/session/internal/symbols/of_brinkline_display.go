@@ -12,6 +12,7 @@ import (
 func init() {
 	tables["brinkline/display/display"] = func() map[string]reflect.Value {
 		return map[string]reflect.Value{
+			"Bars":        reflect.ValueOf(brinkline_display.Bars),
 			"Bundle":      reflect.ValueOf((*brinkline_display.Bundle)(nil)),
 			"Eigenvalues": reflect.ValueOf(brinkline_display.Eigenvalues),
 			"Figure":      reflect.ValueOf((*brinkline_display.Figure)(nil)),
