@@ -16,7 +16,6 @@ type Family struct {
 	second   int
 	members  []*Member
 	resumed  int
-	notes    []string
 	finished bool
 }
 
