@@ -28,7 +28,7 @@ const fourteen = "../../testdata/fourteen-bus.ipynb"
 func demos(t *testing.T) []string {
 	t.Helper()
 	found, err := filepath.Glob("../../notebooks-demo/*.ipynb")
-	if err != nil || len(found) < 2 {
+	if err != nil || len(found) < 3 {
 		t.Fatalf("found %v, %v", found, err)
 	}
 	return append(found, fourteen)
@@ -398,5 +398,168 @@ func TestFeederAgainstSweeps(t *testing.T) {
 		f.factor = pf
 		got := numbers(t, outputText(t, notebook, "factor"), fmt.Sprintf(`(?m)^ +%.2f +\S+ +\S+ +(\S+)`, pf))[0]
 		closeTo(t, fmt.Sprintf("nose at power factor %g", pf), got, f.nose(), 0.005001)
+	}
+}
+
+// mere is the lake of the demo in closed form: the load of a steady state as a
+// function of its phosphorus.
+type mere struct{ loss, recycling, half, exponent float64 }
+
+var mereToday = mere{loss: 0.7, recycling: 60, half: 70, exponent: 5}
+
+func (m mere) load(p float64) float64 {
+	y := math.Pow(p/m.half, m.exponent)
+	return m.loss*p - m.recycling*y/(1+y)
+}
+
+// slope is the derivative of load.
+func (m mere) slope(p float64) float64 {
+	y := math.Pow(p/m.half, m.exponent)
+	return m.loss - m.recycling*m.exponent*y/(p*(1+y)*(1+y))
+}
+
+// middle is where the slope is least, whatever the rates are: the cusp's phosphorus.
+func (m mere) middle() float64 {
+	return m.half * math.Pow((m.exponent-1)/(m.exponent+1), 1/m.exponent)
+}
+
+func (m mere) tipping() float64  { return extremum(m.load, 0, m.middle(), 1) }
+func (m mere) comeback() float64 { return extremum(m.load, m.middle(), 300, -1) }
+
+// later integrates with the classical Runge-Kutta method in steps of a thousandth year.
+func (m mere) later(p, load float64, years int) float64 {
+	const h = 0.001
+	rate := func(p float64) float64 { return load - m.load(p) }
+	for range years * 1000 {
+		a := rate(p)
+		b := rate(p + h/2*a)
+		c := rate(p + h/2*b)
+		p += h / 6 * (a + 2*b + 2*c + rate(p+h*c))
+	}
+	return p
+}
+
+// zero bisects.
+func zero(f func(float64) float64, a, b float64) float64 {
+	rising := f(b) > 0
+	for range 200 {
+		if c := (a + b) / 2; (f(c) > 0) == rising {
+			b = c
+		} else {
+			a = c
+		}
+	}
+	return (a + b) / 2
+}
+
+// halfDigit is half a unit of the last of so many significant digits, and a little more.
+func halfDigit(v float64, digits int) float64 {
+	return 0.501 * math.Pow(10, math.Floor(math.Log10(math.Abs(v)))+1-float64(digits))
+}
+
+const mereNotebook = "../../notebooks-demo/03-lake.ipynb"
+
+func TestLakeStatesAgainstTheirClosedForm(t *testing.T) {
+	m := mereToday
+	over := func(p float64) float64 { return m.load(p) - 20 }
+	tip, back := zero(m.slope, 10, m.middle()), zero(m.slope, m.middle(), 300)
+	states := []float64{zero(over, 0, tip), zero(over, tip, back), zero(over, back, 300)}
+
+	start := outputText(t, mereNotebook, "start")
+	closeTo(t, "today", numbers(t, start, `Phosphorus \(mg/m3\) +(\S+)`)[0], states[0], 5.001e-5)
+	closeTo(t, "eigenvalue", numbers(t, start, `eigenvalues of f_x +(\S+)`)[0], -m.slope(states[0]), 5.001e-5)
+	for i, state := range states {
+		row := fmt.Sprintf(`(?m)^ +%d +(\S+) +%s`, i, []string{"stable", "unstable", "stable"}[i])
+		closeTo(t, row, numbers(t, outputText(t, mereNotebook, "states"), row)[0], state, 0.0005001)
+	}
+	if text := outputText(t, mereNotebook, "states"); regexp.MustCompile(`(?m)^ +3 `).MatchString(text) {
+		t.Errorf("a fourth state in\n%s", text)
+	}
+
+	disturbed := outputText(t, mereNotebook, "disturbed")
+	for _, c := range []struct{ start, rest float64 }{{50, states[0]}, {66, states[0]}, {69, states[2]}, {90, states[2]}} {
+		row := numbers(t, disturbed, fmt.Sprintf(`(?m)^ +%g +(\S+) +(\S+) +(\S+)$`, c.start))
+		closeTo(t, fmt.Sprintf("2 years from %g", c.start), row[0], m.later(c.start, 20, 2), 0.005001)
+		closeTo(t, fmt.Sprintf("10 years from %g", c.start), row[1], m.later(c.start, 20, 10), 0.005001)
+		closeTo(t, fmt.Sprintf("rest from %g", c.start), row[2], c.rest, 0.005001)
+	}
+}
+
+func TestLakeLimitsAgainstTheirClosedForm(t *testing.T) {
+	m := mereToday
+	for _, c := range []struct {
+		cell      string
+		value, at float64
+	}{
+		{"tipping", m.tipping(), zero(m.slope, 10, m.middle())},
+		{"return", m.comeback(), zero(m.slope, m.middle(), 300)},
+	} {
+		text := outputText(t, mereNotebook, c.cell)
+		closeTo(t, c.cell, numbers(t, text, `Load \(mg/m3/yr\) +(\S+)`)[0], c.value, 6e-9)
+		closeTo(t, c.cell+" phosphorus", numbers(t, text, `Phosphorus \(mg/m3\) +(\S+)`)[0], c.at, 5.001e-5)
+		closeTo(t, c.cell+" margin", numbers(t, text, `margin +(\S+) mg`)[0], c.value-20, 5.001e-6)
+		closeTo(t, c.cell+" margin in percent", numbers(t, text, `in percent of the value now +(\S+) %`)[0], 100*(c.value-20)/20, 0.005001)
+		curvature := (m.slope(c.at+1e-4) - m.slope(c.at-1e-4)) / 4e-4
+		closeTo(t, c.cell+" curvature", numbers(t, text, `curvature +.* = (\S+):`)[0], curvature, 5.001e-6)
+	}
+
+	for _, recycling := range []float64{45, 60, 75, 90} {
+		s := m
+		s.recycling = recycling
+		row := numbers(t, outputText(t, mereNotebook, "recycling"), fmt.Sprintf(`(?m)^ +%g +(\S+) +(\S+) +(\S+) +(\S+)$`, recycling))
+		today := zero(func(p float64) float64 { return s.load(p) - 20 }, 0, zero(s.slope, 10, s.middle()))
+		for i, want := range []float64{today, s.tipping(), 5 * (s.tipping() - 20), s.comeback()} {
+			tolerance := []float64{0.05001, 0.005001, 0.5001, 0.005001}[i]
+			closeTo(t, fmt.Sprintf("column %d at recycling %g", i+1, recycling), row[i], want, tolerance)
+		}
+	}
+
+	tables := regexp.MustCompile(`(?s)(How the fold.*)(How the fold.*)`).FindStringSubmatch(outputText(t, mereNotebook, "sensitivities"))
+	if tables == nil {
+		t.Fatal("not two tables of sensitivities")
+	}
+	for _, c := range []struct {
+		row string
+		set func(*mere) *float64
+	}{
+		{`Loss +0.7 1/yr`, func(m *mere) *float64 { return &m.loss }},
+		{`HalfLevel +70 mg/m3`, func(m *mere) *float64 { return &m.half }},
+		{`Exponent +5`, func(m *mere) *float64 { return &m.exponent }},
+		{`Recycling +60 mg/m3/yr`, func(m *mere) *float64 { return &m.recycling }},
+	} {
+		for i, limit := range []func(mere) float64{mere.tipping, mere.comeback} {
+			up, down := m, m
+			now := *c.set(&up)
+			*c.set(&up) *= 1.001
+			*c.set(&down) *= 0.999
+			want := (limit(up) - limit(down)) / (0.002 * now)
+			got := numbers(t, tables[i+1], c.row+` +(\S+) .* (\S+)\n`)
+			closeTo(t, c.row, got[0], want, halfDigit(want, 4))
+			closeTo(t, c.row+" in percent", got[1], want*now/limit(m), halfDigit(want*now/limit(m), 4))
+		}
+	}
+}
+
+func TestLakeLocusAgainstItsClosedForm(t *testing.T) {
+	m := mereToday
+	n, p := m.exponent, m.middle()
+	cusp := numbers(t, outputText(t, mereNotebook, "locus"), `cusp +(\S+) +(\S+) +(\S+) +c = (\S+)`)
+	closeTo(t, "load of the cusp", cusp[0], m.recycling*(n-1)*(n-1)/(4*n), 5.001e-7)
+	closeTo(t, "loss of the cusp", cusp[1], m.recycling*(n*n-1)/(4*n*p), 5.001e-8)
+	closeTo(t, "phosphorus of the cusp", cusp[2], p, 5.001e-5)
+	third := (m.slope(p+0.01) - 2*m.slope(p) + m.slope(p-0.01)) / (0.01 * 0.01)
+	closeTo(t, "cubic coefficient of the cusp", cusp[3], -third/6, 1e-7)
+
+	text := outputText(t, mereNotebook, "flushing")
+	for _, loss := range []float64{0.5, 0.6, 0.7, 0.8, 1.0} {
+		m.loss = loss
+		row := numbers(t, text, fmt.Sprintf(`(?m)^ +%.1f +(\S+) +(\S+)$`, loss))
+		closeTo(t, fmt.Sprintf("return at loss %g", loss), row[0], m.comeback(), 0.05001)
+		closeTo(t, fmt.Sprintf("tipping at loss %g", loss), row[1], m.tipping(), 0.05001)
+	}
+	folds := numbers(t, text, `fold +(\S+) .*\nfold +(\S+) `)
+	for i, limit := range []func(mere) float64{mere.comeback, mere.tipping} {
+		want := zero(func(loss float64) float64 { m.loss = loss; return limit(m) - 20 }, 0.5, 0.9)
+		closeTo(t, "loss at a load of 20", folds[i], want, 1e-10)
 	}
 }
