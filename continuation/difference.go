@@ -253,6 +253,17 @@ func (d *difference) along(x, p []float64, j int, a []float64, step float64) {
 	}
 }
 
+// stencil evaluates f at z + h a, z - h a, z + 2h a and z - 2h a.
+func (d *difference) stencil(x, p []float64, j int, a []float64, h float64) error {
+	for i, step := range [...]float64{h, -h, 2 * h, -2 * h} {
+		d.along(x, p, j, a, step)
+		if err := d.e.Eval(d.x, d.p, d.f[i]); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
 // unit returns the length of a in scaled variables.
 func (d *difference) unit(x, p []float64, j int, a []float64) float64 {
 	sx, sp := d.e.Scales()
@@ -302,11 +313,8 @@ func (d *difference) Second(x, p []float64, j int, a, out []float64) error {
 }
 
 func (d *difference) bend(x, p []float64, j int, a []float64, h float64, middle, out []float64) error {
-	for i, step := range [...]float64{h, -h, 2 * h, -2 * h} {
-		d.along(x, p, j, a, step)
-		if err := d.e.Eval(d.x, d.p, d.f[i]); err != nil {
-			return err
-		}
+	if err := d.stencil(x, p, j, a, h); err != nil {
+		return err
 	}
 	for i := range out {
 		near := d.f[0][i] + d.f[1][i]
@@ -361,11 +369,8 @@ func (d *difference) Third(x, p []float64, j int, a, out []float64) error {
 }
 
 func (d *difference) third(x, p []float64, j int, a []float64, h float64, out []float64) error {
-	for i, step := range [...]float64{h, -h, 2 * h, -2 * h} {
-		d.along(x, p, j, a, step)
-		if err := d.e.Eval(d.x, d.p, d.f[i]); err != nil {
-			return err
-		}
+	if err := d.stencil(x, p, j, a, h); err != nil {
+		return err
 	}
 	for i := range out {
 		out[i] = (d.f[2][i] - d.f[3][i] - 2*(d.f[0][i]-d.f[1][i])) / (2 * h * h * h)

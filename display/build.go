@@ -17,12 +17,18 @@ func (f *Figure) build() (*picture, error) {
 	if err != nil {
 		return nil, err
 	}
+	return f.describe(s, f.sentence(s))
+}
+
+// describe lays a scene out and says it in words: the sentence, and the notes under
+// the plot.
+func (f *Figure) describe(s *scene, sentence string) (*picture, error) {
 	notes := f.notes()
 	p, err := f.lay(s, f.wrapNotes(notes))
 	if err != nil {
 		return nil, err
 	}
-	p.title, p.description = f.heading(s), f.sentence(s)
+	p.title, p.description = f.heading(s), sentence
 	p.text = strings.TrimSpace(p.description + "\n" + strings.Join(notes, "\n"))
 	return p, nil
 }

@@ -5,7 +5,6 @@ import (
 	"math"
 	"math/cmplx"
 	"slices"
-	"strings"
 
 	"gonum.org/v1/plot/vg"
 
@@ -88,14 +87,7 @@ func (f *Figure) buildEigenvalues() (*picture, error) {
 	if err != nil {
 		return nil, err
 	}
-	notes := f.notes()
-	p, err := f.lay(s, f.wrapNotes(notes))
-	if err != nil {
-		return nil, err
-	}
-	p.title, p.description = f.heading(s), f.eigenSentence(s)
-	p.text = strings.TrimSpace(p.description + "\n" + strings.Join(notes, "\n"))
-	return p, nil
+	return f.describe(s, f.eigenSentence(s))
 }
 
 func (f *Figure) eigenScene() (*scene, error) {
