@@ -113,25 +113,39 @@ func (c *Certificate) Holds(a []float64, n int) bool {
 	return c.cholesky()
 }
 
-// product stores PA in m.
+// product stores (PA)ᵀ in m. Row j of it is the sum of a_kj times row k of the
+// symmetric P, so zeros of a, of which large systems have many, cost nothing.
 func (c *Certificate) product(a []float64) {
 	n := c.n
-	if n >= 24 {
+	if n >= 24 && filled(a[:n*n]) > n*n/4 {
 		g := func(d []float64) blas64.General { return blas64.General{Rows: n, Cols: n, Stride: n, Data: d} }
-		blas64.Gemm(blas.NoTrans, blas.NoTrans, 1, g(c.p), g(a[:n*n]), 0, g(c.m))
+		blas64.Gemm(blas.Trans, blas.NoTrans, 1, g(a[:n*n]), g(c.p), 0, g(c.m))
 		return
 	}
 	clear(c.m)
-	for i := range n {
-		row := c.m[i*n : i*n+n]
-		for k := range n {
-			v := c.p[i*n+k]
-			other := a[k*n : k*n+n]
-			for j := range row {
-				row[j] += v * other[j]
+	for k := range n {
+		p := c.p[k*n : k*n+n]
+		for j, v := range a[k*n : k*n+n] {
+			if v == 0 {
+				continue
+			}
+			row := c.m[j*n : j*n+n]
+			for i := range row {
+				row[i] += v * p[i]
 			}
 		}
 	}
+}
+
+// filled counts what is not zero.
+func filled(a []float64) int {
+	count := 0
+	for _, v := range a {
+		if v != 0 {
+			count++
+		}
+	}
+	return count
 }
 
 // cholesky reports whether m is positive definite by more than rounding.

@@ -3,6 +3,7 @@ package session
 import (
 	"fmt"
 	"os"
+	"runtime"
 	"runtime/metrics"
 	"strconv"
 	"strings"
@@ -47,13 +48,24 @@ func (s *Session) watchMemory(r *run) {
 		case <-r.ended:
 			return
 		case <-t.C:
-			if used := heapInUse(); used > s.limit {
+			if s.overLimit() {
 				r.full.Store(true)
 				r.cancel()
 				return
 			}
 		}
 	}
+}
+
+// overLimit reports whether live values pass the limit: what only waits to be
+// collected, perhaps from an earlier cell, is collected before it is held against
+// this one.
+func (s *Session) overLimit() bool {
+	if heapInUse() <= s.limit {
+		return false
+	}
+	runtime.GC()
+	return heapInUse() > s.limit
 }
 
 // memoryError says that a cell was stopped for its memory.
