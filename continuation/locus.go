@@ -17,14 +17,16 @@ type Locus struct {
 	points   []*LocusPoint
 	specials []*LocusSpecial
 	notes    []string
+
+	lastV, lastW []float64 // null vectors of the point collected last
 }
 
 // A LocusPoint is a fold or a Hopf point on a locus.
 type LocusPoint struct {
 	*Point                // the steady state, at both parameter values
 	First, Second float64 // values of the two parameters
-	// Quadratic is a = 1/2 wᵀ f_xx[v, v] of a fold, with |v| = 1 and |w| = 1 in scaled
-	// variables and signs kept along the locus: it vanishes at a cusp.
+	// Quadratic is 1/2 wᵀ f_xx[v, v] of a fold, with |v| = |w| = 1 in the user's units
+	// and signs kept along the locus: it vanishes at a cusp. NaN for a Hopf point.
 	Quadratic float64
 	// Omega is the frequency of a Hopf point, 0 on a fold locus; NaN beyond a
 	// Bogdanov-Takens point, where the locus is one of neutral saddles.
@@ -124,8 +126,8 @@ func (l *Locus) String() string {
 }
 
 // Limits returns the values of the first parameter at which the locus passes a
-// value of the second, interpolated between its points by the cubic through points
-// and tangents.
+// value of the second, on the straight line between its points; [LandAt] puts a
+// point there exactly.
 func (l *Locus) Limits(second float64) []float64 {
 	var list []float64
 	for i := 1; i < len(l.points); i++ {

@@ -225,13 +225,36 @@ func (l *Locus) point(c *core, p *Point) *LocusPoint {
 	}
 	base.Eigenvalues = c.eigenvalues()
 	critical := 1
-	if l.kind != "fold" {
+	if l.kind == "fold" {
+		q.Quadratic = l.quadratic(c, p.State)
+	} else {
 		critical = 2
+		q.Quadratic = math.NaN()
 		q.Omega = math.Sqrt(p.State[c.n+1])
 		q.Lyapunov = c.lyapunovAt(p.State)
 	}
 	base.Unstable = countBeyond(base.Eigenvalues, critical)
 	return q
+}
+
+// quadratic returns 1/2 wᵀ f_xx[v, v] with the signs of the point before.
+func (l *Locus) quadratic(c *core, y []float64) float64 {
+	v, w, err := c.nullPair()
+	if err != nil {
+		return math.NaN()
+	}
+	if l.lastV != nil && dot(v, l.lastV) < 0 {
+		v = negated(v)
+	}
+	if l.lastW != nil && dot(w, l.lastW) < 0 {
+		w = negated(w)
+	}
+	l.lastV, l.lastW = v, w
+	vv, err := c.forms(y).square(state(v))
+	if err != nil {
+		return math.NaN()
+	}
+	return dot(w, vv) / 2
 }
 
 // countBeyond counts eigenvalues with positive real part, leaving out the critical
@@ -311,13 +334,18 @@ func (l *Locus) confirmed(c *core, s *LocusSpecial, p *Point) bool {
 }
 
 // throughZero reports whether the first Lyapunov coefficient changes its sign at a
-// point by passing zero, and not through a pole, as it does at a fold-Hopf point.
+// point by passing zero, and not through a pole, as it does at a fold-Hopf point: it
+// is small there against what it is some points away on either side.
 func (l *Locus) throughZero(i int, value float64) bool {
-	for _, k := range []int{i - 1, i + 1} {
-		if k < 0 || k >= len(l.points) {
-			continue
+	const around = 4
+	for _, side := range []int{-1, +1} {
+		largest := 0.0
+		for k := i + side; k >= 0 && k < len(l.points) && k != i+side*(around+1); k += side {
+			if v := math.Abs(l.points[k].Lyapunov); finite(v) {
+				largest = math.Max(largest, v)
+			}
 		}
-		if beside := l.points[k].Lyapunov; finite(beside) && math.Abs(value) > 1e-3*math.Abs(beside) {
+		if largest > 0 && math.Abs(value) > 1e-3*largest {
 			return false
 		}
 	}

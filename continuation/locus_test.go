@@ -158,6 +158,13 @@ func TestFoldLocusInClosedForm(t *testing.T) {
 	if len(l.Points()) < 20 {
 		t.Errorf("%d points", len(l.Points()))
 	}
+	// f_xx vanishes at the cusp only, x = sqrt(3).
+	for i := 1; i < len(l.Points()); i++ {
+		a, b := l.Points()[i-1], l.Points()[i]
+		if (a.Quadratic > 0) != (b.Quadratic > 0) && (a.State[0]-math.Sqrt(3))*(b.State[0]-math.Sqrt(3)) > 1e-9 {
+			t.Errorf("the quadratic coefficient changes sign between x = %g and %g", a.State[0], b.State[0])
+		}
+	}
 }
 
 // The slope of the locus at a fold is its sensitivity.
