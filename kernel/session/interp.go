@@ -118,7 +118,10 @@ func (m *machine) run(ctx context.Context, p *interp.Program) (err error, abando
 	case <-m.began:
 	}
 	cancel()
-	err = <-ended
+	if err = <-ended; err == nil {
+		// Stopped before its end all the same: the interpreter does not always say so.
+		err = context.Canceled
+	}
 	select {
 	case <-finished:
 	case <-time.After(patience):
