@@ -112,9 +112,10 @@ func TestHeadless(t *testing.T) {
 	script(t, "headless.py", "-v")
 }
 
+// TestConsole runs beside no other test: the console has timeouts of a second that
+// cannot be set.
 func TestConsole(t *testing.T) {
 	need(t, "jupyter_console", "pexpect")
-	t.Parallel()
 	script(t, "console.py", "-v")
 }
 

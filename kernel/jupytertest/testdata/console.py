@@ -12,7 +12,10 @@ class Console(unittest.TestCase):
     def setUp(self):
         self.console = pexpect.spawn(
             sys.executable,
-            ["-m", "jupyter_console", "--kernel", "brinkline", "--simple-prompt"],
+            # On a busy machine the console must wait longer than its second for an
+            # answer, or it takes a complete line for an incomplete one.
+            ["-m", "jupyter_console", "--kernel", "brinkline", "--simple-prompt",
+             "--ZMQTerminalInteractiveShell.kernel_is_complete_timeout=60"],
             encoding="utf-8",
             timeout=60,
         )
