@@ -206,21 +206,6 @@ func (t *tracer) settleSpectrum(a *node, critical int) error {
 	if a.eigenvalues == nil {
 		return nil
 	}
-	nearest := make([]bool, len(a.eigenvalues))
-	for range min(critical, len(nearest)) {
-		best := -1
-		for i, v := range a.eigenvalues {
-			if !nearest[i] && (best < 0 || math.Abs(real(v)) < math.Abs(real(a.eigenvalues[best]))) {
-				best = i
-			}
-		}
-		nearest[best] = true
-	}
-	a.unstable = 0
-	for i, v := range a.eigenvalues {
-		if !nearest[i] && real(v) > 0 {
-			a.unstable++
-		}
-	}
+	a.unstable = countBeyond(a.eigenvalues, critical)
 	return nil
 }

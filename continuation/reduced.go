@@ -41,7 +41,7 @@ func (t *tracer) reduce(a *node, s *crossing, b *BranchPoint) error {
 	}
 	r := &b.Reduced
 	r.Quadratic, r.Mixed, r.ParameterQuadratic = dot(b.Left, vv)/2, dot(b.Left, vm), dot(b.Left, mm)/2
-	if err := t.tangents(b, v, phi); err != nil {
+	if err := t.tangents(forms, b, v, phi); err != nil {
 		return err
 	}
 	h := t.preimage(s, b, vv)
@@ -102,9 +102,9 @@ func (t *tracer) preimage(s *crossing, b *BranchPoint, g []float64) []float64 {
 
 // tangents solves the reduced equation for the directions of both branches and
 // names the point.
-func (t *tracer) tangents(b *BranchPoint, v, phi []float64) error {
+func (t *tracer) tangents(f forms, b *BranchPoint, v, phi []float64) error {
 	// In scaled variables, so that no unit decides.
-	lv, lp := t.scaledLength(v), t.scaledLength(phi)
+	lv, lp := f.length(v), f.length(phi)
 	q, m, p := b.Quadratic/(lv*lv), b.Mixed/(lv*lp), b.ParameterQuadratic/(lp*lp)
 	disc := m*m - 4*q*p
 	if disc <= 0 {
@@ -127,15 +127,6 @@ func (t *tracer) tangents(b *BranchPoint, v, phi []float64) error {
 		b.Tangents[0], b.Tangents[1] = b.Tangents[1], b.Tangents[0]
 	}
 	return nil
-}
-
-// scaledLength is the length of a direction in scaled variables.
-func (t *tracer) scaledLength(d []float64) float64 {
-	sum := 0.0
-	for i, v := range d {
-		sum += v / t.S[i] * v / t.S[i]
-	}
-	return math.Sqrt(sum)
 }
 
 // unitTangent makes a direction a unit vector in the user's units, its parameter
